@@ -18,3 +18,4 @@ class Limits:
     nesting: int = 16  # blocks in blocks
     macro_primitives: int = 10_000  # of one aperture
     yaml_nodes: int = 200_000
+    board_file_bytes: int = 8_000_000

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 from impcheck.artwork.board import NetClass, NetRequest
 from impcheck.artwork.image import Ints
+from impcheck.errors import Remark
 
 
 @dataclass(frozen=True)
@@ -73,6 +74,7 @@ class Nets:
     return_names: tuple[str, ...]  # their net names, for the report
     declared: tuple[DeclaredNet, ...]
     faults: tuple[NetFault, ...]
+    remarks: tuple[Remark, ...] = ()
 
     def name_of(self, label: int) -> str:
         """A name to show for a label: its first name, or "unnamed copper" where no source names it."""

@@ -1,0 +1,65 @@
+"""Cuts against shapely's intersection of the same line with the same copper (a general library as second opinion)."""
+
+import numpy as np
+import shapely
+
+from impcheck.path.cuts import coverage, cut
+from impcheck.path.edges import LayerEdges, Windows
+from tests.path.board_builder import Drawing
+
+
+def _random_layer(rng: np.random.Generator) -> Drawing:
+    board = Drawing(1)
+    for _ in range(30):
+        a, b = rng.uniform(0, 10, (2, 2))
+        board.stroke(0, [tuple(a), tuple(b)], float(rng.uniform(0.1, 0.5)))
+    for _ in range(20):
+        board.disc(0, tuple(rng.uniform(0, 10, 2)), float(rng.uniform(0.2, 1.5)))
+    holes = shapely.union_all([shapely.Point(*rng.uniform(0, 10, 2)).buffer(rng.uniform(0.1, 0.8)) for _ in range(25)])
+    return board.region(0, shapely.box(0, 0, 10, 6) - holes)
+
+
+def test_cuts_agree_with_shapely() -> None:
+    rng = np.random.default_rng(5)
+    layer = _random_layer(rng).copper().layers[0]
+    labels = rng.integers(0, 4, len(layer.shape)).astype(np.int32)
+    count = 60
+    angle = rng.uniform(0, 2 * np.pi, count)
+    windows = Windows(
+        rng.uniform(1, 9, (count, 2)), np.stack([np.cos(angle), np.sin(angle)], axis=1), rng.uniform(0.2, 1.0, count), np.full(count, 1.3)
+    )
+    edges = LayerEdges(layer, labels, windows.boxes(0.01))
+    window = np.repeat(np.arange(count), 5)
+    s = np.sort(rng.uniform(0, 1, (count, 5)), axis=1).ravel() * windows.length[window]
+    found = cut(edges, edges.local(windows), windows, window, s, np.full(len(s), 1.3))
+    normal = np.stack([-windows.heading[:, 1], windows.heading[:, 0]], axis=1)
+    low_window, high_window = np.full(len(s), -0.4), np.full(len(s), 0.7)
+    wanted = np.array([True, False, True, False])
+    share = coverage(found, low_window, high_window, wanted, np.ones(len(s), dtype=np.bool_))
+    by_label = [shapely.union_all(layer.shape[labels == k]) for k in range(4)]
+    for i in range(len(s)):
+        place = windows.origin[window[i]] + s[i] * windows.heading[window[i]]
+        at = normal[window[i]]
+        line = shapely.LineString([place - 1.3 * at, place + 1.3 * at])
+        entries = slice(found.first[i], found.first[i + 1])
+        for k in range(4):
+            parts = [p for p in shapely.get_parts(shapely.intersection(line, by_label[k])) if p.length > 1e-9]
+            truth = sorted(
+                tuple(sorted(((shapely.get_coordinates(p) - place) @ at).tolist()))[:: len(shapely.get_coordinates(p)) - 1] for p in parts
+            )
+            mine = found.label[entries] == k
+            got = list(zip(found.low[entries][mine].tolist(), found.high[entries][mine].tolist(), strict=True))
+            assert np.allclose(np.array(got).reshape(-1, 2), np.array(truth).reshape(-1, 2), atol=1e-9)
+        part = shapely.LineString([place + low_window[i] * at, place + high_window[i] * at])
+        truth_share = shapely.intersection(part, shapely.union_all([by_label[0], by_label[2]])).length / part.length
+        assert abs(share[i] - truth_share) < 1e-9
+
+
+def test_hairline_slits_of_a_plane_are_closed() -> None:
+    board = Drawing(1).region(0, shapely.box(0, 0, 10, 0.5)).region(0, shapely.box(0, 0.51, 10, 3)).region(0, shapely.box(0, 3.02, 10, 5))
+    layer = board.copper().layers[0]
+    windows = Windows(np.array([[5.0, 1.0]]), np.array([[1.0, 0.0]]), np.array([0.5]), np.array([4.0]))
+    edges = LayerEdges(layer, np.zeros(3, dtype=np.int32), windows.boxes(0.01))
+    found = cut(edges, edges.local(windows), windows, np.array([0]), np.array([0.2]), np.array([4.0]), hairline=0.015)
+    assert np.allclose(found.low, [-1.0, 2.02])
+    assert np.allclose(found.high, [2.0, 4.0])
