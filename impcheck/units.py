@@ -7,14 +7,13 @@ import re
 from collections.abc import Mapping
 from decimal import Decimal
 from functools import cache
-from types import MappingProxyType
 
 from quantiphy import Quantity
 
 _NUMBER = re.compile(r"([+-]?(?:\d{1,30}(?:\.\d{0,30})?|\.\d{1,30})(?:[eE][+-]?\d{1,2})?)\s*(\S.*)?")
 
 # exact by definition: 1 inch = 25.4 mm (international yard and pound agreement of 1959), 1 mil = 1/1000 inch
-_LENGTHS: Mapping[str, str] = MappingProxyType({"mil": "0.0254", "mils": "0.0254", "thou": "0.0254", "in": "25.4", "inch": "25.4", '"': "25.4"})
+_INCHES = {"mil": "0.0254", "mils": "0.0254", "thou": "0.0254", "in": "25.4", "inch": "25.4", '"': "25.4"}
 _SI_LENGTHS = ("mm", "um", "µm", "nm", "cm")
 _SI_TIMES = ("s", "ms", "us", "µs", "ns", "ps", "fs")
 _SI_FREQUENCIES = ("Hz", "kHz", "MHz", "GHz", "THz")
@@ -30,7 +29,7 @@ def length(text: str, what: str = "length", example: str = "mm") -> float:
     >>> length("0.19mm"), length("42um"), length("5 mil")
     (0.19, 0.042, 0.127)
     """
-    return _quantity(text, what, example, _SI_LENGTHS, _LENGTHS, "0.001", "mm, um, mil or in")
+    return _quantity(text, what, example, _SI_LENGTHS, _INCHES, "0.001", "mm, um, mil or in")
 
 
 def time(text: str, what: str = "time", example: str = "ps") -> float:
@@ -86,7 +85,9 @@ def number(text: str, what: str = "number") -> float:
     return float(match[1])
 
 
-def _quantity(text: str, what: str, example: str, si: tuple[str, ...], other: Mapping[str, str], base: str, expected: str) -> float:
+def _quantity(  # noqa: PLR0917
+    text: str, what: str, example: str, si: tuple[str, ...], other: Mapping[str, str], base: str, expected: str
+) -> float:
     """The value of a number and its unit; `base` is the result's unit in SI units. Decimal arithmetic: 0.19mm is the float 0.19."""
     plain = text.strip().replace("μ", "µ")  # the Greek letter and the micro sign look alike
     match = _NUMBER.fullmatch(plain)
@@ -111,7 +112,7 @@ def _quantity(text: str, what: str, example: str, si: tuple[str, ...], other: Ma
 
 @cache
 def _si(unit: str) -> Decimal:
-    """What one of a prefixed unit is in the unit without the prefix. The list of units above keeps out what reads in two ways ("m", "mil")."""
+    """What one of a prefixed unit is in the unit without it. The lists of units above keep out what reads in two ways ("m", "mil")."""
     return Decimal(repr(float(Quantity(f"1 {unit}"))))
 
 

@@ -62,24 +62,24 @@ def read_board_file(path: Path, limits: Limits = _DEFAULTS) -> Plan:
 
 
 def parse_board_file(path: Path, limits: Limits, problems: Problems) -> Plan:
-    """Like read_board_file, but mistakes are added to `problems`, and what is right is still given. Raises InputError only where the file is
-    no YAML mapping at all."""
+    """Like read_board_file, but mistakes go to `problems` and what is right is still given. Raises InputError only where the file is no
+    mapping in YAML."""
     name = path.name
-    root = compose(_text(path, limits), name, limits)
+    root = compose(_text(path, limits), name, limits, problems)
     if not isinstance(root.value, dict):
-        raise InputError(Problem(name, root.line, "this is no board file", "a board file begins with `impcheck: 1` and is a mapping of keys"))
+        raise InputError(Problem(name, root.line, "this is no board file", "a board file begins with `impcheck: 1`, key by key"))
     sections = read_sections(root, name, problems)
     stackup = build_stackup(sections, name, problems)
     layers = sections.layer_names()
     reader = _Reader(name, path.parent, sections, problems)
     board = Board(
-        name=str(sections.one("board", "") or path.stem),
+        name=sections.one("board") or path.stem,
         file=name,
         classes=reader.classes(),
         nets=reader.nets(),
-        groups=tuple(Group(item.name, item.nets, item.match, line) for item, line in sections.many("groups", schema.GroupEntry)),
-        returns=tuple(item for item, _ in sections.many("returns", str)),
-        joins=tuple(item for item, _ in sections.many("joins", str)),
+        groups=tuple(Group(item.name, item.nets, item.match, line) for item, line in sections.many("groups")),
+        returns=tuple(item for item, _ in sections.many("returns")),
+        joins=tuple(item for item, _ in sections.many("joins")),
         decks=reader.decks(),
         overrides=reader.overrides(),
         waivers=reader.path_of("waivers"),
@@ -116,7 +116,8 @@ def _text(path: Path, limits: Limits) -> str:
         if not path.is_file():
             raise InputError(Problem(path.name, 0, "this is no regular file", "name a board file (board.yaml)"))
         if path.stat().st_size > limits.board_file_bytes:
-            raise InputError(Problem(path.name, 0, "this file is too large for a board file", f"limit board_file_bytes = {limits.board_file_bytes:,}"))
+            remedy = f"limit board_file_bytes = {limits.board_file_bytes:,}"
+            raise InputError(Problem(path.name, 0, "this file is too large for a board file", remedy))
         data = path.read_bytes()
     except (OSError, ValueError) as error:
         said = getattr(error, "strerror", None) or str(error)
@@ -134,14 +135,15 @@ class _Reader:
     def __init__(self, file: str, folder: Path, sections: Sections, problems: Problems) -> None:
         self.file, self.folder, self.sections, self.problems = file, folder, sections, problems
         self.layers: dict[str, list[int]] = {}
+        self.held = {name: item for name, (item, _) in sections.classes.items()}
 
     def layer(self, name: str, line: int) -> str:
         self.layers.setdefault(name, []).append(line)
         return name
 
     def wish(self, key: str) -> FileWish | None:
-        value = self.sections.one(key, None)
-        return None if value is None else FileWish(str(value), self.sections.line(key))
+        value = self.sections.one(key)
+        return None if value is None else FileWish(value, self.sections.line(key))
 
     def path_of(self, key: str) -> str | None:
         wish = self.wish(key)
@@ -152,7 +154,8 @@ class _Reader:
         path = self.folder / name
         if not is_file(path):
             siblings = sorted(p.name for p in path.parent.iterdir() if p.is_file()) if is_folder(path.parent) else []
-            self.problems.add(self.file, line, f"there is no file '{name}'", did_you_mean(path.name, siblings, "paths are relative to the board file"))
+            remedy = did_you_mean(path.name, siblings, "paths are relative to the board file")
+            self.problems.add(self.file, line, f"there is no file '{name}'", remedy)
         return str(path.resolve())
 
     def widths(self, value: float | dict[str, float] | None, name: str, key: str) -> dict[str, float]:
@@ -164,7 +167,7 @@ class _Reader:
 
     def classes(self) -> dict[str, NetClass]:
         found = {}
-        for name, item, line in self.sections.named("classes", schema.ClassEntry):
+        for name, (item, line) in self.sections.classes.items():
             found[name] = NetClass(
                 name=name,
                 impedance=item.impedance,
@@ -183,12 +186,18 @@ class _Reader:
         found: list[NetRequest] = []
         declared = self.sections.keys("classes")
         seen: dict[tuple[object, ...], int] = {}
-        for item, line in self.sections.many("nets", schema.NetEntry, schema.PairEntry):
+        item: schema.NetEntry | schema.PairEntry
+        for item, line in self.sections.many("nets"):
             pair = isinstance(item, schema.PairEntry)
             name = item.pair if isinstance(item, schema.PairEntry) else item.net
             if item.net_class not in declared:
-                remedy = did_you_mean(item.net_class, declared, f"write it under `classes:`, as in `{item.net_class}: {{impedance: 50 ohm}}`")
+                otherwise = f"write it under `classes:`, as in `{item.net_class}: {{impedance: 50 ohm}}`"
+                remedy = did_you_mean(item.net_class, declared, otherwise)
                 self.problems.add(self.file, line, f"class '{item.net_class}' is not declared", remedy)
+            held = self.held.get(item.net_class)
+            if not pair and held is not None and held.impedance is None and (held.differential is not None or held.common is not None):
+                said = f"class '{item.net_class}' is for pairs and '{name}' is a single net"
+                self.problems.add(self.file, line, said, "give the class an `impedance`, or write {pair: NAME, p: ..., n: ..., class: ...}")
             if isinstance(item, schema.PairEntry) and item.p == item.n:
                 self.problems.add(self.file, line, f"both legs of pair '{name}' are the net '{item.p}'", "name two nets, p and n")
             begin, end = self.ends(item.begin, line), self.ends(item.end, line)
@@ -217,26 +226,30 @@ class _Reader:
 
     def decks(self) -> tuple[str, ...]:
         found = []
-        for item, line in self.sections.many("rules", str):
+        for item, line in self.sections.many("rules"):
+            if not isinstance(item, str):
+                continue
             is_path = "/" in item or "\\" in item or item.lower().endswith((".yaml", ".yml"))
             found.append(self.beside(item, line) if is_path else item)
         return tuple(dict.fromkeys(found)) or ("standard",)
 
     def overrides(self) -> tuple[RuleOverride, ...]:
         found = []
-        for item, line, node in self.sections.mappings("rules"):
-            for rule in item:
-                where, rule_line = node.find((rule,))
-                found.append(RuleOverride(rule, dict(where.native()), rule_line or line))
+        for item, node in self.sections.entries.get("rules", ()):
+            for rule in item if isinstance(item, dict) else ():
+                limits, line = node.find((rule,))
+                found.append(RuleOverride(rule, dict(limits.native()), line))
         return tuple(found)
 
     def drills(self) -> tuple[DrillWish, ...]:
         found: list[DrillWish] = []
         seen: dict[str, int] = {}
         coppers = self.sections.layer_names()
-        for item, line in self.sections.many("drills", schema.DrillEntry):
+        item: schema.DrillEntry
+        for item, line in self.sections.many("drills"):
             if item.file in seen:
-                self.problems.add(self.file, line, f"drill file '{item.file}' stands here already in line {seen[item.file]}", "keep one of the two")
+                said = f"drill file '{item.file}' stands here already in line {seen[item.file]}"
+                self.problems.add(self.file, line, said, "keep one of the two")
                 continue
             seen[item.file] = line
             layers = None if item.layers is None else (self.layer(item.layers[0], line), self.layer(item.layers[1], line))
@@ -245,7 +258,8 @@ class _Reader:
                 back = (self.layer(item.backdrill.begin, line), self.layer(item.backdrill.keep, line))
                 self.backdrill(item, coppers, line)
             elif layers is not None and layers[0] == layers[1]:
-                self.problems.add(self.file, line, f"the holes pass from {layers[0]} to itself", "name the first and the last copper layer they pass")
+                said = f"the holes pass from {layers[0]} to itself"
+                self.problems.add(self.file, line, said, "name the first and the last copper layer they pass")
             found.append(DrillWish(item.file, item.plated, layers, back, line))
         return tuple(found)
 
@@ -261,7 +275,8 @@ class _Reader:
             said = f"a back-drill cannot come from the inner layer {back.begin}"
             self.problems.add(self.file, line, said, f"it comes from {coppers[0]} or {coppers[-1]}")
         if back.begin == back.keep:
-            self.problems.add(self.file, line, f"a back-drill from {back.begin} cannot keep {back.keep}", "name the layer up to which the barrel stays")
+            said = f"a back-drill from {back.begin} cannot keep {back.keep}"
+            self.problems.add(self.file, line, said, "name the layer up to which the barrel stays")
 
 
 def is_file(path: Path) -> bool:

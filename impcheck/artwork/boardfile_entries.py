@@ -1,11 +1,10 @@
-"""The entries of a board file checked one by one. In: the tree of a YAML file; out: the entries that have the right shape, with their lines,
-and a problem for every mistake in the others."""
+"""Checks the entries of a board file one by one. In: the tree of a YAML file; out: those of the right shape, and a problem a mistake."""
 
 from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass, field
-from typing import Any, TypeVar, get_args
+from typing import Annotated, Any, get_args
 
 from pydantic import BaseModel, TypeAdapter, ValidationError
 from pydantic_core import ErrorDetails
@@ -14,8 +13,6 @@ from impcheck.artwork import schema
 from impcheck.artwork.lines import Node
 from impcheck.artwork.names import did_you_mean
 from impcheck.errors import Problems
-
-T = TypeVar("T")
 
 _MODELS: dict[str, type[BaseModel]] = {
     "<mask>": schema.MaskEntry,
@@ -27,7 +24,10 @@ _MODELS: dict[str, type[BaseModel]] = {
     "backdrill": schema.BackdrillEntry,
 }
 _SECTION_MODELS: dict[str, type[BaseModel]] = {"drills": schema.DrillEntry, "classes": schema.ClassEntry, "groups": schema.GroupEntry}
-_CALLED = {"<mask>": "this mask", "<copper>": "this copper layer", "<dielectric>": "this dielectric", "<net>": "this net", "<pair>": "this pair", "<place>": "this place"}
+_CALLED = {
+    "<mask>": "this mask", "<copper>": "this copper layer",
+    "<dielectric>": "this dielectric", "<net>": "this net", "<pair>": "this pair", "<place>": "this place",
+}  # fmt: skip
 _EXAMPLES = {
     "impcheck": "impcheck: 1",
     "thickness": "thickness: 35um",
@@ -55,28 +55,18 @@ class Sections:
     root: Node
     singles: dict[str, Any] = field(default_factory=dict)
     entries: dict[str, list[tuple[Any, Node]]] = field(default_factory=dict)
-    classes: dict[str, tuple[Any, int]] = field(default_factory=dict)
+    classes: dict[str, tuple[schema.ClassEntry, int]] = field(default_factory=dict)
     broken: set[str] = field(default_factory=set)  # sections with at least one entry of the wrong shape
 
-    def one(self, key: str, default: T) -> T | str:
-        return self.singles.get(key, default)
+    def one(self, key: str) -> str | None:
+        """The text of a top-level key that holds one value."""
+        value = self.singles.get(key)
+        return None if value is None else str(value)
 
-    def many(self, key: str, *kinds: type[T]) -> Iterator[tuple[T, int]]:
-        """The entries of a list that are of these kinds, with their lines."""
+    def many(self, key: str) -> Iterator[tuple[Any, int]]:
+        """The entries of a list, with their lines."""
         for item, node in self.entries.get(key, ()):
-            if isinstance(item, kinds):
-                yield item, node.line
-
-    def mappings(self, key: str) -> Iterator[tuple[dict[str, Any], int, Node]]:
-        for item, node in self.entries.get(key, ()):
-            if isinstance(item, dict):
-                yield item, node.line, node
-
-    def named(self, key: str, kind: type[T]) -> Iterator[tuple[str, T, int]]:
-        del key  # classes are the only mapping of names
-        for name, (item, line) in self.classes.items():
-            if isinstance(item, kind):
-                yield name, item, line
+            yield item, node.line
 
     def line(self, key: str) -> int:
         """The line of a top-level key, 0 where the file does not have it."""
@@ -121,7 +111,8 @@ def read_sections(root: Node, file: str, problems: Problems) -> Sections:
         elif key == "classes":
             _read_classes(sections, checker, node)
         else:
-            adapter: TypeAdapter[Any] = TypeAdapter(info.annotation if not info.metadata else _with_metadata(info))
+            kind: Any = Annotated[(info.annotation, *info.metadata)] if info.metadata else info.annotation
+            adapter: TypeAdapter[Any] = TypeAdapter(kind)
             ok, value = checker.check(adapter, node, (key,))
             if ok:
                 sections.singles[key] = value
@@ -130,17 +121,12 @@ def read_sections(root: Node, file: str, problems: Problems) -> Sections:
     return sections
 
 
-def _with_metadata(info: Any) -> Any:
-    from typing import Annotated
-
-    return Annotated[(info.annotation, *info.metadata)]
-
-
 def _read_list(sections: Sections, checker: _Checker, key: str, node: Node, kind: Any) -> None:
     if not isinstance(node.value, list):
         sections.broken.add(key)
         line = sections.root.keys[key]
-        checker.problems.add(checker.file, line, f"'{key}' must be a list, not {schema.described(node.data())}", "write each entry as `- ...` or all of them in [ ]")
+        said = f"'{key}' must be a list, not {schema.described(node.data())}"
+        checker.problems.add(checker.file, line, said, "write each entry as `- ...` or all of them in [ ]")
         return
     adapter: TypeAdapter[Any] = TypeAdapter(kind)
     for index, item in enumerate(node.value):
@@ -155,7 +141,8 @@ def _read_classes(sections: Sections, checker: _Checker, node: Node) -> None:
     if not isinstance(node.value, dict):
         sections.broken.add("classes")
         line = sections.root.keys["classes"]
-        checker.problems.add(checker.file, line, f"'classes' must be a mapping, not {schema.described(node.data())}", "write `name: {impedance: 50 ohm, ...}`")
+        said = f"'classes' must be a mapping, not {schema.described(node.data())}"
+        checker.problems.add(checker.file, line, said, "write `name: {impedance: 50 ohm, ...}`")
         return
     adapter = TypeAdapter(schema.ClassEntry)
     for name, item in node.value.items():

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from itertools import pairwise
 
 from impcheck.artwork import schema
 from impcheck.artwork.boardfile_entries import Sections
@@ -17,7 +18,7 @@ def build_stackup(sections: Sections, file: str, problems: Problems) -> Stackup 
     before = len(problems.found)
     items: list[Item] = []
     lines: list[int] = []
-    for entry, line in sections.many("stackup", schema.MaskEntry, schema.CopperEntry, schema.DielectricEntry):
+    for entry, line in sections.many("stackup"):
         items.append(_item(entry, line))
         lines.append(line)
     if "stackup" in sections.broken or not sections.line("stackup"):
@@ -35,7 +36,8 @@ def _item(entry: schema.MaskEntry | schema.CopperEntry | schema.DielectricEntry,
         return Mask(entry.mask, entry.er, entry.loss_tangent)
     if isinstance(entry, schema.CopperEntry):
         return CopperItem(entry.copper, entry.thickness, entry.etch, entry.roughness, entry.file, entry.negative, line)
-    return Dielectric(entry.dielectric, entry.er, entry.loss_tangent, entry.name, is_core(entry.name) if entry.core is None else entry.core, line)
+    core = is_core(entry.name) if entry.core is None else entry.core
+    return Dielectric(entry.dielectric, entry.er, entry.loss_tangent, entry.name, core, line)
 
 
 def is_core(name: str) -> bool | None:
@@ -51,7 +53,8 @@ def _check_names(items: list[Item], file: str, problems: Problems) -> None:
         if not isinstance(item, CopperItem):
             continue
         if item.name in names:
-            problems.add(file, item.line, f"the copper layer '{item.name}' stands here already in line {names[item.name]}", "give each layer its own name")
+            said = f"the copper layer '{item.name}' stands here already in line {names[item.name]}"
+            problems.add(file, item.line, said, "give each layer its own name")
         names.setdefault(item.name, item.line)
         if item.file is not None:
             if item.file in files:
@@ -72,9 +75,10 @@ def _check_order(items: list[Item], lines: list[int], file: str, problems: Probl
     inner = [(item, line) for item, line in inner if not isinstance(item, Mask)]
     coppers = [item for item, _ in inner if isinstance(item, CopperItem)]
     if len(coppers) < 2:
-        problems.add(file, lines[0], f"the stackup has {len(coppers) or 'no'} copper layer{'' if len(coppers) == 1 else 's'}", "two at least, with a dielectric between them")
+        said = "the stackup has one copper layer" if coppers else "the stackup has no copper"
+        problems.add(file, lines[0], said, "write two at least, with a dielectric between them")
         return
-    for (above, _), (below, line) in zip(inner, inner[1:], strict=False):
+    for (above, _), (below, line) in pairwise(inner):
         if isinstance(above, CopperItem) and isinstance(below, CopperItem):
             said = f"there is no dielectric between {above.name} and {below.name}"
             problems.add(file, line, said, "write `- {dielectric: 110um, er: 4.2}` between them")

@@ -20,7 +20,7 @@ class Node:
     """One value of a YAML file. Scalars stay text as written, for what they mean is the schema's matter (a net may be called NO or 1e3)."""
 
     line: int
-    value: str | None | list[Node] | dict[str, Node]
+    value: str | list[Node] | dict[str, Node] | None
     keys: dict[str, int] = field(default_factory=dict)  # line of each key of a mapping
     plain: bool = False  # a scalar without quotes
     size: int = 1  # nodes in it, aliases counted each time
@@ -64,9 +64,13 @@ class Node:
         return node, line
 
 
-def compose(text: str, file: str, limits: Limits) -> Node:
-    """The tree of a YAML document. Raises InputError, with every mistake of this kind, where the text is no YAML, holds a tag, a key twice, a
-    merge key, more than one document, more than limits.yaml_nodes values with aliases counted each time, or is nested absurdly deep."""
+def compose(text: str, file: str, limits: Limits, problems: Problems | None = None) -> Node:
+    """The tree of a YAML document.
+
+    Raises InputError, with every mistake found so far, where the text is no YAML, holds a tag, more than one document, more than
+    limits.yaml_nodes values with aliases counted each time, or is nested absurdly deep. A key that stands twice, a merge key or one that
+    is no word goes to `problems`, and reading goes on without it; where no `problems` are given it raises too.
+    """
     composer = _Composer(file, limits)
     try:
         root = composer.document(text)
@@ -77,7 +81,10 @@ def compose(text: str, file: str, limits: Limits) -> Node:
         said = f"this is no YAML: {context}, {what}" if context else f"this is no YAML: {what}"
         composer.problems.add(file, mark.line + 1 if mark else 0, said, "check brackets, quotes and indentation here and above")
         raise InputError(composer.problems.found) from None
-    composer.problems.raise_if_any()
+    if composer.tagged or problems is None:
+        composer.problems.raise_if_any()
+    else:
+        problems.found.extend(composer.problems.found)
     return root
 
 
@@ -88,6 +95,7 @@ class _Composer:
         self.anchors: dict[str, Node] = {}
         self.open: set[str] = set()
         self.count = 0
+        self.tagged = False
 
     def document(self, text: str) -> Node:
         self.events = iter(yaml.parse(text, Loader=_LOADER))
@@ -108,6 +116,7 @@ class _Composer:
             return self.alias(event, line, depth)
         self.deepen(depth, line)
         if event.tag is not None and event.tag != "!":
+            self.tagged = True
             self.problems.add(self.file, line, f"the tag '{event.tag}' is not allowed", "leave the tag out and write the plain value")
         self.grow(1, line)
         if event.anchor:

@@ -9,7 +9,7 @@ from fnmatch import fnmatchcase
 
 
 def matching(pattern: str, names: Iterable[str]) -> list[str]:
-    """Names a pattern stands for, in natural order. A name that holds brackets literally (DATA[3]) matches itself before it is a pattern."""
+    """Names a pattern stands for, in natural order. A name with brackets of its own (DATA[3]) matches itself before it is a pattern."""
     known = list(names)
     if pattern in known:
         return [pattern]
@@ -18,7 +18,7 @@ def matching(pattern: str, names: Iterable[str]) -> list[str]:
 
 def natural(name: str) -> tuple[tuple[int, int | str], ...]:
     """A sort key in which D2 stands before D10."""
-    return tuple((0, int(part)) if part.isdigit() else (1, part) for part in re.split(r"([0-9]+)", name) if part)
+    return tuple((0, int(part)) if part.isascii() and part.isdigit() else (1, part) for part in re.split(r"([0-9]+)", name) if part)
 
 
 def did_you_mean(name: str, names: Iterable[str], otherwise: str = "the files name none") -> str:

@@ -1,8 +1,7 @@
-"""The shape of a board file. In: plain values as YAML gives them (text, lists, mappings); out: models in mm, s, ohm, and a JSON Schema for editors."""
+"""The shape of a board file. In: text, lists and mappings as YAML holds them; out: models in mm, s, ohm, and a JSON Schema for editors."""
 
 from __future__ import annotations
 
-import math
 from collections.abc import Callable
 from typing import Annotated, Any, Literal
 
@@ -13,21 +12,20 @@ from impcheck import units
 VERSION = "1"
 
 
-def _checked(read: Callable[[str, str], float], low: float, high: float, schema: dict[str, Any], strict: bool = True) -> Any:
-    """An annotated float: `read` turns text into a number; it must lie above `low` (at `low` too where not strict) and not above `high`."""
+def _between(read: Callable[[str, str], float], low: float, high: float, unit: str = "", reaches: bool = False) -> BeforeValidator:
+    """A validator: `read` turns text into a number, which must lie above `low` (or be it, where it `reaches` so far) and not above `high`."""
 
     def validate(value: object, info: ValidationInfo) -> float:
         what = (info.field_name or "value").replace("_", " ")
         if not isinstance(value, str):
             raise ValueError(f"{what} must be one quantity, not {described(value)}")
         number = read(value, what)
-        if not math.isfinite(number) or number < low or (strict and number == low) or number > high:
-            bound = f"above {low:g}" if strict else f"at least {low:g}"
-            bound += f" and at most {high:g}" if math.isfinite(high) else ""
-            raise ValueError(f"{what} '{value}' is impossible; it must be {bound}{schema.get('x-unit', '')}")
+        if number < low or (number == low and not reaches) or number > high:
+            bound = f"at least {low:g}" if reaches else f"above {low:g}"
+            raise ValueError(f"{what} '{value}' is impossible; it must be {bound} and at most {high:g}{unit}")
         return number
 
-    return Annotated[float, BeforeValidator(validate), WithJsonSchema({k: v for k, v in schema.items() if k != "x-unit"})]
+    return BeforeValidator(validate)
 
 
 def _length(text: str, what: str) -> float:
@@ -42,32 +40,32 @@ def _place(text: str, what: str) -> float:
     return units.length(text, what, "mm")
 
 
-def _percent(text: str, what: str) -> float:
-    return units.ratio(text, what)
+def _written(example: str, meaning: str) -> WithJsonSchema:
+    return WithJsonSchema({"type": "string", "pattern": r"^\s*[+-]?[0-9.]", "examples": [example], "description": meaning})
 
 
-def _quantity_schema(example: str, unit: str, described_as: str) -> dict[str, Any]:
-    return {"type": "string", "pattern": r"^\s*[+-]?[0-9.]", "examples": [example], "description": described_as, "x-unit": unit}
+_LENGTH = _written("0.19mm", "A length with its unit: mm, um, mil, in")
+_TIME = _written("300ps", "A time with its unit: ps, ns")
 
-
-_LENGTH = _quantity_schema("0.19mm", " mm", "A length with its unit: mm, um, mil, in")
-_TIME = _quantity_schema("300ps", " s", "A time with its unit: ps, ns")
-_OHM = _quantity_schema("50 ohm", " ohm", "An impedance with its unit: ohm")
-_SHARE = _quantity_schema("10%", " (100% = 1)", "A share in per cent")
-_ANY = -math.inf
-
-CopperThickness = _checked(_length, 0, 2, _LENGTH)
-DielectricThickness = _checked(_length, 0, 20, _LENGTH)
-MaskThickness = _checked(_length, 0, 1, _LENGTH)
-Width = _checked(_length, 0, 1000, _LENGTH)
-SmallLength = _checked(_length, 0, 1, _LENGTH, strict=False)
-Coordinate = _checked(_place, -10_000, 10_000, _LENGTH, strict=False)
-RiseTime = _checked(units.time, 0, 1e-3, _TIME)
-Delay = _checked(units.time, 0, 1e-3, _TIME)
-Ohms = _checked(units.impedance, 0, 10_000, _OHM)
-Tolerance = _checked(_percent, 0, 0.9, _SHARE)
-Permittivity = _checked(units.number, 1, 1000, {"type": "number", "minimum": 1, "maximum": 1000, "description": "Relative permittivity"}, strict=False)
-LossTangent = _checked(units.number, 0, 1, {"type": "number", "minimum": 0, "maximum": 1, "description": "Loss tangent"}, strict=False)
+CopperThickness = Annotated[float, _between(_length, 0, 2, " mm"), _LENGTH]
+DielectricThickness = Annotated[float, _between(_length, 0, 20, " mm"), _LENGTH]
+MaskThickness = Annotated[float, _between(_length, 0, 1, " mm"), _LENGTH]
+Width = Annotated[float, _between(_length, 0, 1000, " mm"), _LENGTH]
+SmallLength = Annotated[float, _between(_length, 0, 1, " mm", reaches=True), _LENGTH]
+Coordinate = Annotated[float, _between(_place, -10_000, 10_000, " mm", reaches=True), _LENGTH]
+Duration = Annotated[float, _between(units.time, 0, 1e-3, " s"), _TIME]
+Ohms = Annotated[float, _between(units.impedance, 0, 10_000, " ohm"), _written("50 ohm", "An impedance with its unit: ohm")]
+Tolerance = Annotated[float, _between(units.ratio, 0, 0.9, ", where 1 is 100%"), _written("10%", "A share in per cent")]
+Permittivity = Annotated[
+    float,
+    _between(units.number, 1, 1000, reaches=True),
+    WithJsonSchema({"type": "number", "minimum": 1, "maximum": 1000, "description": "Relative permittivity"}),
+]
+LossTangent = Annotated[
+    float,
+    _between(units.number, 0, 1, reaches=True),
+    WithJsonSchema({"type": "number", "minimum": 0, "maximum": 1, "description": "Loss tangent"}),
+]
 
 
 def _name(value: object) -> object:
@@ -125,7 +123,7 @@ class CopperEntry(Entry):
     copper: Name = Field(description="Name of the layer, used everywhere else")
     thickness: CopperThickness = Field(description="Finished thickness of the copper")
     file: Name | None = Field(None, description="Its Gerber file; may be left out where the files say it themselves")
-    etch: SmallLength = Field(0.0, json_schema_extra={"default": "0"}, description="How much narrower, both sides together, the side away from the laminate is")
+    etch: SmallLength = Field(0.0, json_schema_extra={"default": "0"}, description="How much narrower the far side is, in total")
     roughness: SmallLength = Field(0.0, json_schema_extra={"default": "0"}, description="Roughness, rms")
     negative: YesNo | None = Field(None, description="true: what is drawn is etched away")
 
@@ -184,10 +182,10 @@ class ClassEntry(Entry):
     differential: Ohms | None = None
     common: Ohms | None = None
     tolerance: Tolerance = Field(0.1, description="Share of the target, both ways", json_schema_extra={"default": "10%"})
-    rise_time: RiseTime | None = None
+    rise_time: Duration | None = None
     width: LayeredWidth | None = Field(None, description="Width of the trace, or widths by layer")
     gap: LayeredWidth | None = Field(None, description="Gap inside a pair, or gaps by layer")
-    max_skew: Delay | None = None
+    max_skew: Duration | None = None
 
 
 class PlaceEntry(Entry):
@@ -237,7 +235,7 @@ class GroupEntry(Entry):
 
     name: Name
     nets: tuple[Name, ...] = Field(min_length=1)
-    match: Delay
+    match: Duration
 
 
 RuleEntry = Annotated[

@@ -13,7 +13,6 @@ from impcheck.copper.copper import Copper
 from impcheck.nets.nets import Nets
 from impcheck.path.graph import Graph
 from impcheck.path.route import Route
-from impcheck.path.strands import groups_of
 from impcheck.path.walk import Branch
 
 
@@ -127,8 +126,7 @@ def _to_edge(graph: Graph, tip: int, points: Floats, copper: Copper, nets: Nets)
         return 0.0
     reach = 2 * float(noded.width[edges[0]])
     layer = int(noded.layer[tip])
-    owner = groups_of(nets)[1]
-    pieces = copper.layers[layer].shape[owner[nets.piece_label[layer]] == noded.net[tip]]
+    pieces = copper.layers[layer].shape[graph.owner[nets.piece_label[layer]] == noded.net[tip]]
     ray = shapely.LineString([points[-1], points[-1] + reach * _unit(points[-1] - points[-2])])
     near = pieces[shapely.intersects(pieces, ray)]
     inside = shapely.intersection(shapely.union_all(near), ray) if len(near) else shapely.LineString()

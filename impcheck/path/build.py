@@ -11,7 +11,6 @@ from impcheck.path.branches import find_branches
 from impcheck.path.graph import Graph, build_graph
 from impcheck.path.route import Leg, Route, cut_route, find_route
 from impcheck.path.stations import LegFacts, Measure
-from impcheck.path.strands import groups_of
 from impcheck.path.walk import Branch, Run, Stations, Walk, Zone
 
 MIN_LEG = 1e-4  # mm
@@ -22,7 +21,6 @@ def walk_nets(artwork: Artwork, copper: Copper, nets: Nets) -> tuple[Walk, ...]:
     if not nets.declared:
         return ()
     graph = build_graph(copper, nets)
-    _, owner = groups_of(nets)
     routes = [find_route(graph, net) for net in nets.declared]
     branches: list[list[Branch]] = []
     legs: list[Leg] = []
@@ -49,7 +47,7 @@ def walk_nets(artwork: Artwork, copper: Copper, nets: Nets) -> tuple[Walk, ...]:
             )
         stay += max(numbers, default=-1) + 1
         leaving.update(_leaving(graph, route, hanging))
-    stations = Measure(copper, nets, artwork.stackup, owner, graph.pads).all(legs, facts, leaving)
+    stations = Measure(copper, nets, artwork.stackup, graph.owner, graph.pads).all(legs, facts, leaving)
     walks = []
     for index, net in enumerate(nets.declared):
         first, last = spans[index]

@@ -33,7 +33,7 @@ class Frame:
         return window, np.clip(s - self.base[window], 0.0, self.windows.length[window])
 
 
-CURVE = np.radians(12.0)  # vertices that turn less, between short segments, belong to a chopped curve
+CURVE = np.radians(12.0)  # vertices that turn less, beside a short segment, belong to a chopped curve
 CURVE_SEGMENT = 0.4  # mm
 
 
@@ -42,7 +42,7 @@ def corners(frame: Frame) -> tuple[NDArray[np.int64], NDArray[np.int64], Floats]
     after = np.flatnonzero(frame.base > 1e-9)
     one, two = frame.windows.heading[after - 1], frame.windows.heading[after]
     turn = np.abs(np.arctan2(one[:, 0] * two[:, 1] - one[:, 1] * two[:, 0], np.einsum("ij,ij->i", one, two)))
-    short = np.maximum(frame.windows.length[after], frame.windows.length[after - 1]) < CURVE_SEGMENT
+    short = np.minimum(frame.windows.length[after], frame.windows.length[after - 1]) < CURVE_SEGMENT
     curve = (turn < CURVE) & short & (turn > 1e-6)
     corner = (turn > 1e-6) & ~curve
     return after[corner], after[curve], turn[corner]

@@ -26,6 +26,7 @@ class Graph:
     """Nodes and edges of all groups of declared nets; the groups are not connected with each other."""
 
     group: list[int]  # of each declared net
+    owner: NDArray[np.int64]  # (labels + 1,) group that carries each label, -1 none
     noded: Noded
     pads: Pads
     pad_node: NDArray[np.int64]  # (pads,)
@@ -39,7 +40,7 @@ def build_graph(copper: Copper, nets: Nets) -> Graph:
     """Centreline graph of all declared nets at once."""
     group, owner = groups_of(nets)
     strands, pads = gather(copper, nets)
-    pins = list(dict.fromkeys(_pins(nets)))
+    pins = [pin for pin in dict.fromkeys(_pins(nets)) if owner[pin.label] >= 0]
     strands = Strands.join([strands, _pad_links(strands, pads)])
     pad_marks = np.array(pads.centre).reshape(-1, 2), np.array(pads.net, dtype=np.int32), np.array(pads.layer, dtype=np.int32)
     pad_of_pin, extra = _place_pins(pins, owner, strands, pads, len(copper.layers))
@@ -61,10 +62,16 @@ def build_graph(copper: Copper, nets: Nets) -> Graph:
         nodes = [int(pad_node[p]) for p in pad_of_pin[index]]
         nodes += [int(noded.marks[len(pads) + k]) for k, entry in enumerate(extra) if entry[3] == index]
         pin_nodes[pin] = tuple(dict.fromkeys(nodes))
-    return _finish(group, noded, pads, pad_node, pin_nodes)
+    return _finish((group, owner), noded, pads, pad_node, pin_nodes)
 
 
-def _finish(group: list[int], noded: Noded, pads: Pads, pad_node: NDArray[np.int64], pin_nodes: dict[BoardPin, tuple[int, ...]]) -> Graph:
+def _finish(
+    groups: tuple[list[int], NDArray[np.int64]],
+    noded: Noded,
+    pads: Pads,
+    pad_node: NDArray[np.int64],
+    pin_nodes: dict[BoardPin, tuple[int, ...]],
+) -> Graph:
     neighbours: dict[int, list[tuple[int, int]]] = defaultdict(list)
     for edge, (a, b) in enumerate(noded.ends.tolist()):
         neighbours[a].append((b, edge))
@@ -81,7 +88,7 @@ def _finish(group: list[int], noded: Noded, pads: Pads, pad_node: NDArray[np.int
     for pin, nodes in pin_nodes.items():
         for node in nodes:
             pins_at[node].append(pin)
-    return Graph(group, noded, pads, pad_node, pin_nodes, dict(neighbours), dict(pads_at), dict(pins_at))
+    return Graph(*groups, noded, pads, pad_node, pin_nodes, dict(neighbours), dict(pads_at), dict(pins_at))
 
 
 def _pins(nets: Nets) -> Iterable[BoardPin]:

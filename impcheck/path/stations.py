@@ -11,12 +11,13 @@ from numpy.typing import NDArray
 
 from impcheck.artwork.image import Bools, Floats
 from impcheck.artwork.stackup import Stackup
-from impcheck.copper.copper import Copper
+from impcheck.copper.copper import Copper, LayerCopper
 from impcheck.nets.nets import Nets
 from impcheck.path import events, zones
 from impcheck.path.cuts import HAIRLINE, coverage, cut, union_length
 from impcheck.path.edges import LayerEdges, LocalEdges
 from impcheck.path.frame import Frame, make_frame, usual_width
+from impcheck.path.intervals import clean_own, own_interval, part_of, spread
 from impcheck.path.reference import reaches, references
 from impcheck.path.route import Leg
 from impcheck.path.strands import Pads
@@ -102,7 +103,7 @@ class Measure:
         heading = frame.windows.heading[window]
         at = frame.windows.origin[window] + heading * s[:, None]
         cuts = cut(edges, local, frame.windows, window, s, part.reach[leg])
-        measured, centre, entry = _own_interval(cuts, self.owner, part.group[leg])
+        measured, centre, entry = own_interval(cuts, self.owner, part.group[leg])
         lost = entry < 0
         measured[lost] = frame.width[window[lost]]
         zone, pad_size = zones.pad_zones(at, part.group[leg], self.pads[layer])
@@ -120,7 +121,7 @@ class Measure:
         width = np.minimum(width, pad_size)
         narrowed = width < measured - 1e-9
         centre[narrowed] = 0.0
-        cuts = _clean_own(cuts, entry, narrowed, width, centre, zone, self.owner, part.group[leg])
+        cuts = clean_own(cuts, entry, narrowed, width, centre, zone, self.owner, part.group[leg])
         others = self._outwards(part, leg, window, s)
         cover = {
             other: coverage(found, centre - width / 2, centre + width / 2, self.wanted, where) for other, (where, found) in others.items()
@@ -136,10 +137,10 @@ class Measure:
         for index in range(len(frame.legs)):
             own = slice(int(first[index]), int(first[index + 1]))
             along = frame.legs[index].along
-            met = {layer: _slice(cuts, own)}
+            met = {layer: part_of(cuts, own)}
             for other, (where, found) in others.items():
                 if where[own].any():
-                    met[other] = _slice(found, own)
+                    met[other] = part_of(found, own)
             count = own.stop - own.start
             result.append(
                 Stations(
@@ -163,7 +164,7 @@ class Measure:
         sure: events.Places = []
         loose: events.Places = []
         own = self.owner[edges.labels[local.piece]] == part.group[frame.leg[local.window]]
-        stroke = self.copper.layers[part.layer].whole & ~np.isnan(self.copper.layers[part.layer].width)
+        stroke = _strokes(self.copper.layers[part.layer])
         events.own_layer(frame, local, own, stroke[local.piece], self._hidden(part, edges, local, own & ~stroke[local.piece]), sure, loose)
         for other in range(len(self.copper.layers)):
             between = part.between(other)
@@ -213,7 +214,7 @@ class Measure:
                 if found is None or len(np.setdiff1d(needed, windows, assume_unique=True)):
                     found = _renumber(there.local(frame.windows.take(needed)), needed)
                 few = cut(there, found, frame.windows, window[mine], s[mine], part.reach[leg[mine]], hairline=HAIRLINE)
-                result[other] = (going, _spread(few, mine, count))
+                result[other] = (going, spread(few, mine, count))
                 station = np.repeat(mine, np.diff(few.first))
                 kept = self.wanted[few.label]
                 met.append((station[kept], few.low[kept], few.high[kept] + HAIRLINE / 2))
@@ -276,6 +277,13 @@ class _Part:
         return result
 
 
+def _strokes(layer: LayerCopper) -> Bools:
+    """(pieces,) True for whole round strokes longer than a dot."""
+    moved = np.append((layer.image.start != layer.image.end).any(axis=1) | (layer.image.sweep != 0), False)
+    result: Bools = layer.whole & ~np.isnan(layer.width) & moved[layer.object]
+    return result
+
+
 def _pads_by_layer(pads: Pads, layers: int) -> list[zones.PadShapes]:
     net, layer = np.array(pads.net, dtype=np.int64), np.array(pads.layer, dtype=np.int64)
     shape = np.array(pads.shape, dtype=object)
@@ -294,60 +302,6 @@ def _pads_by_layer(pads: Pads, layers: int) -> list[zones.PadShapes]:
     return result
 
 
-def _own_interval(cuts: Intervals, owner: NDArray[np.int64], group: NDArray[np.int64]) -> tuple[Floats, Floats, NDArray[np.int64]]:
-    """Width, middle and entry of the own copper on the centreline (the nearest own copper where none lies there; entry -1: none)."""
-    count = len(group)
-    station = np.repeat(np.arange(count), np.diff(cuts.first))
-    own = np.flatnonzero(owner[cuts.label] == group[station])
-    away = np.maximum(np.maximum(cuts.low[own], -cuts.high[own]), 0.0)
-    order = own[np.lexsort((away, station[own]))]
-    chosen, where = np.unique(station[order], return_index=True)
-    entry = np.full(count, -1, dtype=np.int64)
-    entry[chosen] = order[where]
-    width, centre = np.zeros(count), np.zeros(count)
-    width[chosen] = cuts.high[entry[chosen]] - cuts.low[entry[chosen]]
-    centre[chosen] = (cuts.high[entry[chosen]] + cuts.low[entry[chosen]]) / 2
-    far = np.zeros(count, dtype=np.bool_)
-    far[chosen] = np.maximum(cuts.low[entry[chosen]], -cuts.high[entry[chosen]]) > width[chosen] + 0.05
-    entry[far], width[far], centre[far] = -1, 0.0, 0.0
-    return width, centre, entry
-
-
-def _clean_own(
-    cuts: Intervals,
-    entry: NDArray[np.int64],
-    narrowed: Bools,
-    width: Floats,
-    centre: Floats,
-    zone: NDArray[np.uint8],
-    owner: NDArray[np.int64],
-    group: NDArray[np.int64],
-) -> Intervals:
-    """At bends and junctions the own copper is given the trace's width, and other own copper that the cut meets there is left out."""
-    low, high = cuts.low.copy(), cuts.high.copy()
-    which = np.flatnonzero(narrowed & (entry >= 0))
-    low[entry[which]], high[entry[which]] = centre[which] - width[which] / 2, centre[which] + width[which] / 2
-    station = np.repeat(np.arange(len(group)), np.diff(cuts.first))
-    bend = (zone[station] == Zone.BEND) | (zone[station] == Zone.JUNCTION)
-    drop = bend & (owner[cuts.label] == group[station]) & (np.arange(len(low)) != entry[station])
-    keep = ~drop
-    first = np.concatenate([[0], np.cumsum(np.bincount(station[keep], minlength=len(group)))]).astype(np.int32)
-    return Intervals(first, low[keep], high[keep], cuts.label[keep])
-
-
 def _renumber(local: LocalEdges, windows: NDArray[np.int64]) -> LocalEdges:
     """Edges of a choice of windows with the numbers the windows have in the whole."""
     return replace(local, window=windows[local.window], solid_window=windows[local.solid_window])
-
-
-def _spread(few: Intervals, mine: NDArray[np.int64], count: int) -> Intervals:
-    """Intervals of some stations as intervals of all."""
-    size = np.zeros(count, dtype=np.int64)
-    size[mine] = np.diff(few.first)
-    return Intervals(np.concatenate([[0], np.cumsum(size)]).astype(np.int32), few.low, few.high, few.label)
-
-
-def _slice(cuts: Intervals, stations: slice) -> Intervals:
-    first = cuts.first[stations.start : stations.stop + 1]
-    low, high = int(first[0]), int(first[-1])
-    return Intervals(first - first[0], cuts.low[low:high], cuts.high[low:high], cuts.label[low:high])

@@ -12,16 +12,11 @@ from numpy.typing import NDArray
 from impcheck.artwork.image import Bools, Floats, Ints, Kind
 from impcheck.copper.copper import Copper, LayerCopper
 from impcheck.nets.nets import BoardPin, Nets
-from impcheck.path.medial import medial_axis
+from impcheck.path.regions import centrelines, pad_regions
 
 CHORD_ERROR = 0.001  # mm, of chopped arcs, as everywhere in the house
 FLANK = 0.005  # mm beside a stroke where the free-flank test looks
 PAINT_LENGTH = 2.0  # widths: a stroke shorter than this is never taken for paint
-PAD_ELONGATION = 6.0  # a region longer than this many widths is no pad, even with a pin in it
-BARREL_PAD_ELONGATION = 3.0
-BLOB_ELONGATION = 4.0  # copper shorter than this many widths has no centreline worth following
-BLOB_WIDTH = 2.5  # mm, mean width from which copper is a pour rather than a trace
-SLIVER = 0.25  # mm, what stays this close to strokes and pads is a teardrop or a slip of the tool, not a trace
 
 
 @dataclass(frozen=True)
@@ -176,12 +171,16 @@ def _on_layer(
         return strokes
     regions = others[~painted[others]]
     unclaimed = [pin for pin in pins if not shapely.intersects_xy(shapes[flashes], *pin).any()]
-    pad_regions = _pad_regions(shapes[regions], unclaimed, holes)
-    for position, centre in pad_regions.items():
+    compact = pad_regions(shapes[regions], unclaimed, holes)
+    for position, centre in compact.items():
         pads.add(net, layer.index, shapes[regions[position]], centre)
-    kept = np.setdiff1d(others, regions[list(pad_regions)])
+    kept = np.setdiff1d(others, regions[list(compact)])
     solid = [*shapes[(draws | arcs) & ~painted], *shapes[flashes]]
-    return Strands.join([strokes, *_from_regions(net, layer.index, shapes[kept], solid, strokes, pads)])
+    lines, pours = centrelines(shapes[kept], solid, len(strokes) > 0)
+    for shape in pours:
+        centre = shape.centroid if shape.intersects(shape.centroid) else shape.representative_point()
+        pads.add(net, layer.index, shape, (centre.x, centre.y), blob=True)
+    return Strands.join([strokes, *(strands_of(net, layer.index, *line) for line in lines)])
 
 
 def _stroke_lines(net: int, layer: LayerCopper, pieces: NDArray[np.int64], draws: Bools, arcs: Bools) -> tuple[Strands, NDArray[np.int64]]:
@@ -190,7 +189,12 @@ def _stroke_lines(net: int, layer: LayerCopper, pieces: NDArray[np.int64], draws
     plain = np.flatnonzero(draws & layer.whole[pieces])
     width = layer.width[pieces].copy()
     for position in np.flatnonzero(np.isnan(width) & (draws | arcs)).tolist():
-        width[position] = _extent_across(layer.shape[pieces[position]], image.start[objects[position]], image.end[objects[position]])
+        shape = layer.shape[pieces[position]]
+        width[position] = (
+            2 * shape.area / shape.length
+            if arcs[position]
+            else _extent_across(layer.shape[pieces[position]], image.start[objects[position]], image.end[objects[position]])
+        )
     parts = [strands_of(net, layer.index, image.start[objects[plain]], image.end[objects[plain]], width[plain])]
     owners = [plain]
     for position in np.flatnonzero((draws | arcs) & ~(draws & layer.whole[pieces])).tolist():
@@ -198,6 +202,7 @@ def _stroke_lines(net: int, layer: LayerCopper, pieces: NDArray[np.int64], draws
         points = np.stack([image.start[item], image.end[item]])
         if arcs[position]:
             points = chop(image.start[item], image.centre[item], float(image.sweep[item]))
+            points[-1] = image.end[item]
         chains = [points]
         if not layer.whole[pieces[position]]:
             cut = shapely.intersection(shapely.LineString(points), layer.shape[pieces[position]])
@@ -256,60 +261,3 @@ def _painted(strokes: Strands, piece_of: NDArray[np.int64], shapes: NDArray[np.o
     longest = PAINT_LENGTH * np.bincount(piece_of, strokes.width * length, len(shapes)) / np.maximum(weight, 1e-12)
     result: Bools = (mean > 0.45) & (weight > longest)
     return result
-
-
-def elongation(shape: shapely.Polygon) -> float:
-    """Length over width of the rectangle of the same area and perimeter; 1 for anything rounder."""
-    half, area = shape.length / 2, shape.area
-    root = half * half - 4 * area
-    if root <= 0 or area <= 0:
-        return 1.0
-    width = (half - np.sqrt(root)) / 2
-    return float((half - width) / width)
-
-
-def _pad_regions(shapes: NDArray[np.object_], pins: list[tuple[float, float]], holes: Floats) -> dict[int, tuple[float, float]]:
-    """Regions that are pads, with their centres: the most compact one around each pin that no flash claims, and compact ones around barrels."""
-    found: dict[int, tuple[float, float]] = {}
-    stretch = np.array([elongation(shape) for shape in shapes])
-    width = 2 * shapely.area(shapes) / np.maximum(shapely.length(shapes), 1e-12)
-    for limit, points in ((PAD_ELONGATION, np.array(pins).reshape(-1, 2)), (BARREL_PAD_ELONGATION, holes.reshape(-1, 2))):
-        for point in points:
-            around = np.flatnonzero(shapely.intersects_xy(shapes, *point) & (stretch <= limit) & (width <= BLOB_WIDTH))
-            if len(around):
-                best = int(around[np.argmin(stretch[around])])
-                centre = shapes[best].centroid
-                inside = limit == PAD_ELONGATION and shapes[best].intersects(centre)
-                found.setdefault(best, (centre.x, centre.y) if inside else (float(point[0]), float(point[1])))
-    return found
-
-
-def _from_regions(
-    net: int, layer: int, regions: NDArray[np.object_], solid: list[shapely.Polygon], strokes: Strands, pads: Pads
-) -> list[Strands]:
-    """Strands along region copper that is long and narrow; pours are added to `pads` as blobs; teardrops are left out."""
-    found: list[Strands] = []
-    if not len(regions):
-        return found
-    cover = shapely.union_all(shapely.buffer(solid, 0.001, quad_segs=4)) if solid else shapely.Polygon()
-    near = cover.buffer(SLIVER, quad_segs=4) if len(strokes) else cover
-    for shape in shapely.get_parts(shapely.union_all(regions)).tolist():
-        if shape.geom_type != "Polygon" or shape.area <= 0:
-            continue
-        if len(strokes) and shapely.difference(shape, near).is_empty and len(shapely.get_parts(shapely.intersection(cover, shape))) <= 1:
-            continue  # a teardrop, a slip of the tool, or the same trace drawn again
-        mean_width = 2 * shape.area / shape.length
-        if mean_width > BLOB_WIDTH or (mean_width > BLOB_WIDTH / 4 and elongation(shape) < BLOB_ELONGATION):
-            _add_blob(net, layer, shape, pads)
-            continue
-        start, end, width = medial_axis(shape)
-        if len(start):
-            found.append(strands_of(net, layer, start, end, width))
-        else:
-            _add_blob(net, layer, shape, pads)
-    return found
-
-
-def _add_blob(net: int, layer: int, shape: shapely.Polygon, pads: Pads) -> None:
-    centre = shape.centroid if shape.intersects(shape.centroid) else shape.representative_point()
-    pads.add(net, layer, shape, (centre.x, centre.y), blob=True)

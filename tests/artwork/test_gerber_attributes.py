@@ -82,7 +82,7 @@ def test_deleting_what_is_not_set_does_no_harm() -> None:
 
 
 def test_a_file_attribute_set_differently_is_remarked() -> None:
-    image = read("%TF.Part,Single*%%TF.Part,Array*%")
+    image = read("%TF.Part,Single*%%TF.Part,Array*%X0Y0D03*")
     assert image.attributes[".Part"] == ("Array",)
     assert "set twice" in image.remarks[0].text
 

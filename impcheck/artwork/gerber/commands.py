@@ -7,18 +7,19 @@ from dataclasses import dataclass, replace
 from typing import Literal
 
 from impcheck.artwork.gerber.apertures import FARTHEST, parse_aperture
-from impcheck.artwork.gerber.attributes import Attributes, Values
+from impcheck.artwork.gerber.attributes import Attributes, fields
 from impcheck.artwork.gerber.macro import Macro, MacroError, parse_macro
 from impcheck.artwork.gerber.notes import Notes
 from impcheck.artwork.gerber.scan import Piece
 from impcheck.artwork.gerber.whole import NUMBER, WHOLE, Whole, WholeError
-from impcheck.artwork.image import Aperture, Pin, Transform
+from impcheck.artwork.image import Aperture, Transform
 from impcheck.artwork.limits import Limits
 
 INCH = 25.4
+_LINE_END = re.compile(rb"[\r\n]")
 _STANDARD_COMMENT = re.compile(r"G\s*0*4\s*#@!\s*(T[FAOD])(.*)", re.DOTALL)
 _MACRO_BLOCK = re.compile(r"\s*(?:[\d$-]|$|G0*4\b)")
-_MOST_WORK = 20_000_000  # numbers and operators of all macros evaluated; real boards stay under a million
+_MOST_WORK = 5_000_000  # numbers and operators of all macros evaluated; real boards stay under a million
 _MOST_ATTRIBUTES = 1_000  # aperture attributes at one time; the specification knows about ten
 NOT_DEFINED = -1_000_000  # index of an aperture whose definition could not be read; that is an error of its own
 
@@ -59,20 +60,28 @@ class Commands:
         self.transforms: dict[Transform, int] = {Transform(): 0}
         self.dark: list[tuple[int, bool]] = [(-1, True)]
         self.transform: list[tuple[int, int]] = [(-1, 0)]
-        self.named: list[tuple[int, int, int, int]] = [(-1, -1, -1, -1)]  # offset; net, pin, component
         self.structure: list[Structure] = []
         self.whole = Whole()
         self.attributes = Attributes()
-        self.nets: dict[Values, int] = {}
-        self.pins: dict[Pin, int] = {}
-        self.components: dict[str, int] = {}
         self._macros: dict[str, Macro] = {}
         self._transform = Transform()
         self._work = 0
         self._open_blocks: list[int] = []
+        names = self.attributes.objects
+        seen: dict[bytes, tuple[int, int]] = {}  # a board repeats its nets; each text is taken apart once
         for piece in pieces:
-            if piece.comment:
+            text = piece.text
+            known = seen.get(text)
+            if known:
+                names.change(piece.offset, *known)
+            elif piece.comment:
                 self._comment(piece)
+            elif text == b"TD*" and not self.attributes.aperture:
+                names.change(piece.offset, *names.deleted(""))
+            elif text.startswith((b"TO.N,", b"TO.P,", b"TO.C,")) and text.find(b"*") == len(text) - 1 and not _LINE_END.search(text):
+                name, values = fields(self._text(text[2:-1], piece.offset).strip())
+                seen[text] = names.entry(name, values)
+                names.change(piece.offset, *seen[text])
             else:
                 self._piece(piece)
 
@@ -137,25 +146,11 @@ class Commands:
     def _attribute(self, command: str, text: str, offset: int) -> None:
         if "\n" in text or "\r" in text:
             text = text.replace("\n", "").replace("\r", "")
-        odd = self.attributes.apply(command, text.strip())
+        odd = self.attributes.apply(command, text.strip(), offset)
         if odd:
             self.notes.odd(odd, offset)
         if len(self.attributes.aperture) > _MOST_ATTRIBUTES:
             raise self.notes.fatal(offset, "too many aperture attributes", f"limit {_MOST_ATTRIBUTES:,} at one time; %TD*% drops them")
-        if command in ("TO", "TD"):
-            of = self.attributes.object
-            # N/C marks a pad that is no net's, each one for itself.
-            names = tuple(name for name in of.get(".N", ()) if name and name != "N/C")
-            pin = of.get(".P", ())
-            component = (*of.get(".C", ()), "")[0]
-            entry = (
-                offset,
-                self.nets.setdefault(names, len(self.nets)) if names else -1,
-                self.pins.setdefault(Pin(*(*pin, "")[:3]), len(self.pins)) if len(pin) >= 2 else -1,
-                self.components.setdefault(component, len(self.components)) if component else -1,
-            )
-            if entry[1:] != self.named[-1][1:]:
-                self.named.append(entry)
 
     def _macro(self, name: str, body: list[str], offset: int) -> None:
         if not name:

@@ -102,6 +102,9 @@ class Expansion:
         stack[-1].parts.append(shifted(out, np.repeat(np.column_stack([x.ravel(), y.ravel()]), len(content), axis=0)))
 
     def _check(self, objects: int, segments: int, offset: int | None, what: str) -> None:
+        objects += self._made[0]
+        segments += self._made[1]
+        self._made = [objects, segments]
         if objects > self.limits.objects:
             raise self.notes.fatal(
                 offset, f"{what} makes {objects:,} objects (limit objects = {self.limits.objects:,})", "check the counts"

@@ -90,7 +90,8 @@ def draw(rows: Rows, commands: Commands, notes: Notes) -> Objects:
     offset = rows.offset[mine]
     transform = held(commands.transform, offset)
     transform[kind[mine] == Kind.REGION] = 0
-    named = [held([(change[0], change[k]) for change in commands.named], offset) for k in (1, 2, 3)]
+    changes = np.array(commands.attributes.objects.changes, np.int64)
+    named = changes[np.searchsorted(changes[:, 0], offset, side="right") - 1, 1:].astype(np.int32)
     return Objects(
         offset=offset,
         kind=kind[mine],
@@ -101,9 +102,9 @@ def draw(rows: Rows, commands: Commands, notes: Notes) -> Objects:
         end=end[mine],
         centre=centre[mine],
         sweep=sweep[mine],
-        net=named[0],
-        pin=named[1],
-        component=named[2],
+        net=named[:, 0],
+        pin=named[:, 1],
+        component=named[:, 2],
         contour_object=np.searchsorted(mine, contour_row).astype(np.int32),
         contour_size=contour_size,
         segment_start=segment_start,

@@ -122,8 +122,8 @@ def _image(file: str, objects: Objects, expansion: Expansion, commands: Commands
         net=objects.net,
         pin=objects.pin,
         component=objects.component,
-        nets=tuple(commands.nets),
-        pins=tuple(commands.pins),
-        components=tuple(commands.components),
+        nets=tuple(commands.attributes.objects.nets),
+        pins=tuple(commands.attributes.objects.pins),
+        components=tuple(commands.attributes.objects.components),
         remarks=notes.remarks(),
     )

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -18,8 +19,7 @@ _END = re.compile(rb"M\s*(?:0*2|0+|30)\s*\*")
 _PADDING = b"\x00\x1a \t\r\n\f\v"
 
 
-@dataclass(frozen=True)
-class Piece:
+class Piece(NamedTuple):
     """One part of the file that is not made of plain statements."""
 
     offset: int
@@ -43,36 +43,46 @@ def scan(data: bytes, notes: Notes) -> Scan:
     refuse_other_files(data[:end], notes)
     plain = np.frombuffer(data, np.uint8, end).copy()
     pieces: list[Piece] = []
+    begins: list[int] = []
+    behinds: list[int] = []
     ends = _END.finditer(data, 0, end)
     last = next(ends, None)
+    last_at = last.start() if last else end
     for match in _PIECE.finditer(data, 0, end):
         start, stop = match.span()
-        if last and last.start() < start:  # outside of every piece, so it is the code
-            break
-        text = match.group()
-        if text == b"G":
+        first = data[start]
+        if first == 71 and stop == start + 1:
             continue
-        while last and last.start() < stop:
+        if last_at < start:  # outside of every piece, so it is the code
+            break
+        while last_at < stop and last:
             last = next(ends, None)
-        if text[0] == 37:  # %
-            if len(text) < 2 or text[-1] != 37:
+            last_at = last.start() if last else end
+        if first == 37:  # %
+            text = data[start + 1 : stop - 1]
+            if stop < start + 2 or data[stop - 1] != 37:
                 raise notes.fatal(
                     start, "the file ends inside a %...% command", "the file is cut off, or a closing % is missing; export it again"
                 )
-            if (b"\n" in text or b"\r" in text) and not text.startswith(b"%AM"):
-                _refuse_code_inside(text, start, notes)
-            pieces.append(Piece(start, text[1:-1], False))
-        elif text[0] == 71:  # G04
-            if text[-1] != 42:
+            if (b"\n" in text or b"\r" in text) and not text.startswith(b"AM"):
+                _refuse_code_inside(text, start + 1, notes)
+            pieces.append(Piece(start, text, False))
+        elif first == 71:  # G04
+            if data[stop - 1] != 42:
                 raise notes.fatal(start, "the file ends inside a comment", "the file is cut off; export it again")
-            pieces.append(Piece(start, text[:-1], True))
+            pieces.append(Piece(start, data[start : stop - 1], True))
         else:
-            shown = text.split(b"*")[0].strip()[:24].decode("latin-1")
+            shown = data[start:stop].split(b"*")[0].strip()[:24].decode("latin-1")
             notes.error(
                 start, f"unknown statement at '{shown}'", "a Gerber statement is made of X, Y, I, J, D, G and M codes and ends with *"
             )
-        plain[start] = 42
-        plain[start + 1 : stop] = 32
+        begins.append(start)
+        behinds.append(stop)
+    depth = np.zeros(end + 1, np.int8)
+    depth[begins] += 1
+    depth[behinds] -= 1
+    plain[np.cumsum(depth[:end], dtype=np.int8) > 0] = 32
+    plain[begins] = 42
     if last:
         if data[last.end() : end].strip(_PADDING):
             notes.odd("what follows the end of the file (M02) is not read", last.end() + 1)
@@ -122,10 +132,10 @@ def _refuse_cut_end(data: bytes, end: int, notes: Notes) -> None:
 
 def _refuse_code_inside(text: bytes, start: int, notes: Notes) -> None:
     """One clear error where a missing "%" turned drawing code and commands inside out."""
-    position = 1
-    for part in text[1:-1].split(b"*"):
+    position = 0
+    for part in text.split(b"*"):
         if _CODE.match(part.lstrip()):
             where = start + position + len(part) - len(part.lstrip())
-            remedy = f"the % opened in line {notes.line(start)} is not closed there"
+            remedy = f"the % opened in line {notes.line(start - 1)} is not closed there"
             raise notes.fatal(where, "drawing code stands inside a %...% command", remedy)
         position += len(part) + 1

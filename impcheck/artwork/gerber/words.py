@@ -118,10 +118,12 @@ def _numbers(
     value = np.bincount(owner, weights=(plain[digit_at] - 48) * _POWERS[np.minimum(exponent, 16)], minlength=count).astype(np.float64)
     star = plain[token_at] == 42
     for k in np.flatnonzero(star & (digits > 0))[:50]:
-        notes.error(int(token_at[k]) + 1, "a number without a letter before it", "a statement starts with a letter such as X, G or D")
+        at = int(digit_at[np.searchsorted(owner, k)])
+        notes.error(at, "a number without a letter before it", "a statement starts with a letter such as X, G or D")
     for k in np.flatnonzero(digits > MOST_DIGITS)[:50]:
         if not _is_zero_padded(plain, token_at, int(k)):
             notes.error(int(token_at[k]), "number out of range", f"a number has at most {MOST_DIGITS} digits")
+            value[k] = 0.0
 
     sign_at = np.flatnonzero(kind == _SIGN)
     if len(sign_at):
