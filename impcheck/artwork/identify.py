@@ -1,4 +1,4 @@
-"""What each fabrication file is. In: the first bytes of a file and its name; out: its Role (copper layer, mask, outline, drills, ...) and how it is known."""
+"""What one fabrication file is. In: its first bytes and its name; out: its Role (copper layer, mask, outline, drills) and how it is known."""
 
 from __future__ import annotations
 
@@ -41,10 +41,15 @@ class Role:
 UNKNOWN = Role("", Source.NAME)
 
 _ATTRIBUTE = re.compile(rb"(?:%|#@!)\s*TF\.FileFunction,([^*%\r\n]*)")
-_GERBER = re.compile(rb"%\s*(?:FS|MO|AD|AM|LP|TF|IN|IP|OF|SF|AS|LN|SR)|\bG04\b[^*]*\*|^\s*(?:G54)?D[1-9]\d+\*|X-?\d+(?:Y-?\d+)?D0?[123]\*", re.MULTILINE)
-_EXCELLON = re.compile(rb"^\s*(?:M48|T0*\d{1,4}(?:[CFSBHZ]\d*\.?\d+)+)\s*(?:[;(].*)?\r?$|^\s*%\s*\r?\n\s*(?:T\d|G\d|M\d|X|Y)", re.MULTILINE)
-_EXCELLON_BODY = re.compile(rb"^\s*T\d{1,4}\s*\r?\n\s*(?:G0?5\s*\r?\n\s*)?[XY][-+]?[\d.]", re.MULTILINE)
+_GERBER = re.compile(
+    rb"%\s*(?:FS|MO|AD|AM|LP|TF|IN|IP|OF|SF|AS|LN|SR)|\bG04\b[^*]*\*|^\s*(?:G54)?D[1-9]\d+\*|X-?\d+(?:Y-?\d+)?D0?[123]\*", re.MULTILINE
+)
+_EXCELLON = re.compile(
+    rb"^[ \t]*(?:M48|T\d{1,5}(?:[CFSBHZ]\d{0,9}\.?\d{1,9}){1,6})[ \t]*(?:[;(].*)?\r?$|^[ \t]*%[ \t]*\r?\n[ \t]*(?:T\d|G\d|M\d|X|Y)", re.MULTILINE
+)
+_EXCELLON_BODY = re.compile(rb"^[ \t]*T\d{1,4}[ \t]*\r?\n[ \t]*(?:G0?5[ \t]*\r?\n[ \t]*)?[XY][-+]?[\d.]", re.MULTILINE)
 _IPC356 = re.compile(rb"^(?:P  (?:JOB|UNITS|VER|TITLE|CODE|NUM|REV|IMAGE|NNAME)\b?|[03][1-4]7.{17,}[X+\- \d])", re.MULTILINE)
+_DRILL_SUFFIXES = (".drl", ".xln", ".exc", ".tap", ".nc", ".cnc", ".ncd", ".drill")
 _BINARY = re.compile(rb"\A(?:%PDF|PK\x03\x04|\x89PNG|\xff\xd8\xff|GIF8|BM|\x1f\x8b|7z\xbc\xaf|Rar!)|\x00")
 
 
@@ -59,7 +64,7 @@ def content_kind(head: bytes) -> str:
         return ""
     if len(_IPC356.findall(head)) >= 2:
         return "netlist"
-    if re.search(rb"^\s*M48\s*(?:[;(].*)?\r?$", head, re.MULTILINE):
+    if re.search(rb"^[ \t]*M48[ \t]*(?:[;(].*)?\r?$", head, re.MULTILINE):
         return "excellon"
     if _GERBER.search(head):
         return "gerber"
@@ -105,7 +110,7 @@ def role_of_function(function: Sequence[str], source: Source) -> Role:
 def role_of_name(name: str, kind: str) -> Role:
     """The role a file's name suggests, by the habits of layout tools. `kind` is what its content looks like: a drill file is one by content."""
     part, side, order, plated = role_by_name(name)
-    if kind == "excellon":
+    if kind == "excellon" or (kind == "" and name.lower().endswith(_DRILL_SUFFIXES)):  # an empty drill file is to be complained of
         return Role("drill", Source.NAME, plated=plating_in(name))
     if kind in ("netlist", "job", "binary") or (part == "drill" and kind == "gerber"):
         return Role("other", Source.NAME)
@@ -136,13 +141,6 @@ def span_in(name: str, count: int) -> tuple[int, int] | None:
             return None
         first, last = (words[word] if word in words else int(word[2:]) + 1 for word in match.groups())
     return (first, last) if 1 <= first < last <= count else None
-
-
-def outer_side(role: Role, count: int) -> Role:
-    """A copper role by name with its layer number filled in where the name is sure: top, bottom."""
-    if role.part == "copper" and role.layer is None and role.side in ("top", "bottom"):
-        return Role("copper", role.source, layer=1 if role.side == "top" else count, side=role.side)
-    return role
 
 
 def number_inner(roles: Mapping[str, Role], free: Sequence[int]) -> dict[str, int]:

@@ -1,4 +1,4 @@
-"""What a file's name says, by the habits of layout tools. In: a name; out: part of the board, side and number, "" where it says nothing."""
+"""What a file's name says, by the habits of layout tools. In: a name; out: part of the board, side and number, "" where it says none."""
 
 from __future__ import annotations
 
@@ -26,7 +26,7 @@ _OTHER_WORDS = (
     r"silk|legend|overlay|screen|paste|cream|stencil|assembl|assy|fab(?:rication)?$|drill[_ -]?(?:map|drawing|chart|dwg|guide|table)"
     r"|courtyard|adhesive|glue|keep|dwgs?\b|drawing|comments?\b|eco\d|readme|pick|place|bom|carbon|peel|v[-_ ]?(?:cut|score)|margin|user\d?\b"
 )
-_TOP, _BOTTOM = r"top|front|component ?side|\bf\b|\bcmp\b|\bcs\b|primary", r"bot(?:tom)?|back|solder ?side|\bb\b|\bsol\b|\bss\b|secondary"
+_TOP, _BOTTOM = r"top|front|component ?(?:side|mask)|\bf\b|\bcmp\b|\bcs\b|primary", r"bot(?:tom)?|back|solder ?side|\bb\b|\bsol\b|\bss\b|secondary"
 
 
 @cache
@@ -66,10 +66,9 @@ def _by_words(stem: str) -> Named:
         return "copper", "inner", (3, int(match[1])), None
     match = re.search(r"\b(?:copper |cu |signal )?(?:l|layer|ly|lay|lyr|group) ?(\d{1,2})\b", words)
     if match:
-        number = int(match[1])
-        sided = side if side and (side == "top") == (number == 1) else "top" if number == 1 else "inner"
-        return "copper", sided, (3, number), None
-    if side and (re.search(r"copper|\bcu\b|etch|signal|layer|conductor", words) or words.split()[-1:] and re.fullmatch(_TOP + "|" + _BOTTOM, words.split()[-1])):
+        return "copper", "inner", (3, int(match[1])), None
+    last = words.split()[-1] if words.split() else ""
+    if side and (re.search(r"copper|\bcu\b|etch|signal|layer|conductor", words) or re.fullmatch(f"{_TOP}|{_BOTTOM}", last)):
         return "copper", side, (), None
     return NOTHING
 

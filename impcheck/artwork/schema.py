@@ -13,7 +13,7 @@ VERSION = "1"
 
 
 def _between(read: Callable[[str, str], float], low: float, high: float, unit: str = "", reaches: bool = False) -> BeforeValidator:
-    """A validator: `read` turns text into a number, which must lie above `low` (or be it, where it `reaches` so far) and not above `high`."""
+    """A validator: `read` turns text into a number, which must lie above `low` (or be it, where it `reaches` it) and not above `high`."""
 
     def validate(value: object, info: ValidationInfo) -> float:
         what = (info.field_name or "value").replace("_", " ")

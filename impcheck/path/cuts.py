@@ -16,7 +16,14 @@ _STRIDE = 4.0  # more than any window is long
 
 
 def cut(
-    edges: LayerEdges, local: LocalEdges, windows: Windows, window: NDArray[np.int64], s: Floats, reach: Floats, *, hairline: float = 0.0
+    edges: LayerEdges,
+    local: LocalEdges,
+    windows: Windows,
+    window: NDArray[np.int64],
+    s: Floats,
+    *,
+    reach: Floats,
+    hairline: float = 0.0,
 ) -> Intervals:
     """Copper met by n cuts, cut i at `s[i]` of window `window[i]` out to `reach[i]` on both sides.
 
@@ -38,7 +45,7 @@ def cut(
     final[:-1] = key[1:] != key[:-1]
     opened = fresh & (sign_in < 0)
     left_open = final & (sign_in > 0)
-    full_station, full_piece = _whole_width(edges, local, windows, window, s, key, pieces)
+    full_station, full_piece = _whole_width(edges, local, windows, window, s, crossed=key, pieces=pieces)
     all_station = np.concatenate([station_in, station_in[opened], station_in[left_open], full_station, full_station])
     all_piece = np.concatenate([piece_in, piece_in[opened], piece_in[left_open], full_piece, full_piece])
     all_t = np.concatenate([t_in, -reach[station_in[opened]], reach[station_in[left_open]], -reach[full_station], reach[full_station]])
@@ -97,6 +104,7 @@ def _whole_width(
     windows: Windows,
     window: NDArray[np.int64],
     s: Floats,
+    *,
     crossed: NDArray[np.int64],
     pieces: np.int64,
 ) -> tuple[NDArray[np.int64], NDArray[np.int64]]:

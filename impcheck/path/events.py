@@ -49,7 +49,7 @@ def _slanted(local: LocalEdges, keep: Bools, step: Floats, places: Places) -> No
     places.append((local.window[index], local.s0[index] + rank / parts[index] * (local.s1[index] - local.s0[index])))
 
 
-def own_layer(frame: Frame, local: LocalEdges, own: Bools, stroke: Bools, hidden: Bools, sure: Places, loose: Places) -> None:
+def own_layer(frame: Frame, local: LocalEdges, own: Bools, stroke: Bools, hidden: Bools, *, sure: Places, loose: Places) -> None:
     """Events on the run's own layer. `own` (edges,): of the same net; `stroke` (edges,): of a round stroke, whose ends lie hidden in the
     next one. `hidden` (edges,): the edge ends inside other copper of the net."""
     width = frame.width[local.window]
@@ -80,7 +80,7 @@ def own_layer(frame: Frame, local: LocalEdges, own: Bools, stroke: Bools, hidden
     _slanted(local, foreign & (near < width / 2 + 0.8), GAP_SHARE * gap, loose)
 
 
-def plane_layer(frame: Frame, local: LocalEdges, wanted: Bools, height: Floats, sure: Places, loose: Places) -> None:
+def plane_layer(frame: Frame, local: LocalEdges, wanted: Bools, height: Floats, *, sure: Places, loose: Places) -> None:
     """Events on a layer that may carry the return: `wanted` (edges,) are those of return copper, `height` (windows,)."""
     for share in (-0.4999, 0.0, 0.4999):
         _crossings(local, wanted, share * frame.width, sure)

@@ -34,6 +34,7 @@ def clean_own(
     narrowed: Bools,
     width: Floats,
     centre: Floats,
+    *,
     zone: NDArray[np.uint8],
     owner: NDArray[np.int64],
     group: NDArray[np.int64],
@@ -58,6 +59,7 @@ def spread(few: Intervals, mine: NDArray[np.int64], count: int) -> Intervals:
 
 
 def part_of(cuts: Intervals, stations: slice) -> Intervals:
+    """Intervals of a run of stations."""
     first = cuts.first[stations.start : stations.stop + 1]
     low, high = int(first[0]), int(first[-1])
     return Intervals(first - first[0], cuts.low[low:high], cuts.high[low:high], cuts.label[low:high])

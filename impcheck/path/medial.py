@@ -13,7 +13,7 @@ from itertools import pairwise
 import numpy as np
 import shapely
 from numpy.typing import NDArray
-from scipy.spatial import Voronoi, cKDTree
+from scipy.spatial import QhullError, Voronoi, cKDTree
 
 from impcheck.artwork.image import Floats
 from impcheck.path.straighten import assemble, regular_chain
@@ -21,7 +21,7 @@ from impcheck.path.straighten import assemble, regular_chain
 SAMPLES_PER_WIDTH = 4
 DETOUR = 2.0  # boundary length over chord from which two boundary points face each other across copper; a corner of 90 degrees has 1.41
 SAME_POINT = 1e-5  # mm
-MAX_SAMPLES = 400_000
+MAX_SAMPLES = 200_000
 
 
 def medial_axis(polygon: shapely.Polygon) -> tuple[Floats, Floats, Floats]:
@@ -37,7 +37,10 @@ def medial_axis(polygon: shapely.Polygon) -> tuple[Floats, Floats, Floats]:
     edge_start, edge_end = _edges(shape)
     if len(points) < 6:
         return nothing
-    diagram = Voronoi(points)
+    try:
+        diagram = Voronoi(points)
+    except QhullError:  # all points on one line: nothing between two sides
+        return nothing
     pairs, ends = np.asarray(diagram.ridge_points), np.asarray(diagram.ridge_vertices)
     lengths = np.array([shapely.LinearRing(r).length for r in (shape.exterior, *shape.interiors)])
     apart = np.abs(along[pairs[:, 0]] - along[pairs[:, 1]])
@@ -63,7 +66,7 @@ def medial_axis(polygon: shapely.Polygon) -> tuple[Floats, Floats, Floats]:
         return nothing
     place = _centred(place, ends, edge[pairs], edge_start, edge_end)
     chains = _chains(place, ends, edge[pairs], chord)
-    regular = [regular_chain(place[nodes], faces, widths, (nodes[0], nodes[-1]), edge_start, edge_end) for nodes, faces, widths in chains]
+    regular = [regular_chain(place[nodes], faces, widths, (nodes[0], nodes[-1]), (edge_start, edge_end)) for nodes, faces, widths in chains]
     return assemble(place, regular, shift)
 
 

@@ -42,7 +42,7 @@ def node_strands(strands: Strands, mark_at: Floats, mark_net: Ints, mark_layer: 
     count = len(strands)
     vector = strands.end - strands.start
     size = np.hypot(*vector.T)
-    strand, share = _splits(strands, vector, size, mark_at, mark_net, mark_layer)
+    strand, share = _splits(strands, vector, size, (mark_at, mark_net, mark_layer))
     split_at = strands.start[strand] + share[:, None] * vector[strand]
     places = np.concatenate([mark_at.reshape(-1, 2), strands.start, strands.end, split_at])
     nets = np.concatenate([mark_net, strands.net, strands.net, strands.net[strand]])
@@ -67,10 +67,9 @@ def node_strands(strands: Strands, mark_at: Floats, mark_net: Ints, mark_layer: 
     return Noded(place, layers[first], nets[first], ends, length, strands.width[source], strands.link[source], node[:offset])
 
 
-def _splits(
-    strands: Strands, vector: Floats, size: Floats, mark_at: Floats, mark_net: Ints, mark_layer: Ints
-) -> tuple[NDArray[np.int64], Floats]:
-    """Strand and share (0..1) of every split."""
+def _splits(strands: Strands, vector: Floats, size: Floats, marks: tuple[Floats, Ints, Ints]) -> tuple[NDArray[np.int64], Floats]:
+    """Strand and share (0..1) of every split; `marks` are places, nets and layers."""
+    mark_at, mark_net, mark_layer = marks
     found_strand: list[NDArray[np.int64]] = [np.empty(0, dtype=np.int64)]
     found_share: list[Floats] = [np.empty(0)]
 

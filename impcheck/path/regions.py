@@ -1,4 +1,4 @@
-"""What a region of copper is: pad, pour, teardrop or trace. In: polygons of one net on one layer, pins, mm; out: pads, pours, centrelines, mm."""
+"""What a region is: pad, pour, teardrop or trace. In: polygons of one net on one layer, pins, mm; out: pads, pours, centrelines, mm."""
 
 from __future__ import annotations
 
@@ -13,6 +13,7 @@ PAD_ELONGATION = 6.0  # a region longer than this many widths is no pad, even wi
 BARREL_PAD_ELONGATION = 3.0
 BLOB_ELONGATION = 4.0  # copper shorter than this many widths has no centreline worth following
 BLOB_WIDTH = 2.5  # mm, mean width from which copper is a pour rather than a trace
+THINNEST = 0.01  # mm, mean width below which copper is a flaw of the drawing and no trace
 SLIVER = 0.25  # mm, what stays this close to strokes and pads is a teardrop or a slip of the tool, not a trace
 
 
@@ -27,7 +28,7 @@ def elongation(shape: shapely.Polygon) -> float:
 
 
 def pad_regions(shapes: NDArray[np.object_], pins: list[tuple[float, float]], holes: Floats) -> dict[int, tuple[float, float]]:
-    """Regions that are pads, with their centres: the most compact one around each pin that no flash claims, and compact ones around barrels."""
+    """Regions that are pads, with their centres: the most compact one around each pin that no flash claims, and compact ones at barrels."""
     found: dict[int, tuple[float, float]] = {}
     stretch = np.array([elongation(shape) for shape in shapes])
     width = 2 * shapely.area(shapes) / np.maximum(shapely.length(shapes), 1e-12)
@@ -47,8 +48,8 @@ def centrelines(
 ) -> tuple[list[tuple[Floats, Floats, Floats]], list[shapely.Polygon]]:
     """Start, end and width of the pieces of centreline of each region that is long and narrow, and the regions that are pours.
 
-    `solid` are the strokes and pads of the same net and layer; where there are `strokes`, regions that lie close to them and join nothing new
-    are left out: teardrops, slips of the tool, and the same trace drawn again.
+    `solid` are the strokes and pads of the same net and layer; where there are `strokes`, regions that lie close to them and join nothing
+    new are left out: teardrops, slips of the tool, and the same trace drawn again.
     """
     lines: list[tuple[Floats, Floats, Floats]] = []
     pours: list[shapely.Polygon] = []
@@ -62,6 +63,8 @@ def centrelines(
         if strokes and shapely.difference(shape, near).is_empty and len(shapely.get_parts(shapely.intersection(cover, shape))) <= 1:
             continue
         mean_width = 2 * shape.area / shape.length
+        if mean_width < THINNEST:
+            continue
         if mean_width > BLOB_WIDTH or (mean_width > BLOB_WIDTH / 4 and elongation(shape) < BLOB_ELONGATION):
             pours.append(shape)
             continue

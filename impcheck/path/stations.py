@@ -102,7 +102,7 @@ class Measure:
         window, s = frame.place(leg, middle)
         heading = frame.windows.heading[window]
         at = frame.windows.origin[window] + heading * s[:, None]
-        cuts = cut(edges, local, frame.windows, window, s, part.reach[leg])
+        cuts = cut(edges, local, frame.windows, window, s, reach=part.reach[leg])
         measured, centre, entry = own_interval(cuts, self.owner, part.group[leg])
         lost = entry < 0
         measured[lost] = frame.width[window[lost]]
@@ -116,12 +116,12 @@ class Measure:
             own = slice(int(first[index]), int(first[index + 1]))
             drawn = usual_width(frame.legs[index])
             usual = zones.usual_of(zone[own], measured[own], begin[own], end[own], drawn)
-            zones.spread_teardrops(zone[own], begin[own], end[own], measured[own], usual, fact.open_ends)
+            zones.spread_teardrops(zone[own], begin[own], end[own], measured[own], usual, open_ends=fact.open_ends)
             width[own] = zones.carried_width(zone[own], measured[own], drawn)
         width = np.minimum(width, pad_size)
         narrowed = width < measured - 1e-9
         centre[narrowed] = 0.0
-        cuts = clean_own(cuts, entry, narrowed, width, centre, zone, self.owner, part.group[leg])
+        cuts = clean_own(cuts, entry, narrowed, width, centre, zone=zone, owner=self.owner, group=part.group[leg])
         others = self._outwards(part, leg, window, s)
         cover = {
             other: coverage(found, centre - width / 2, centre + width / 2, self.wanted, where) for other, (where, found) in others.items()
@@ -131,7 +131,7 @@ class Measure:
             for other, values in cover.items():
                 mine = reference[leg] == other
                 covered[side][mine] = values[mine]
-        self._spread_vias(part, first, zone, begin, end, covered)
+        self._spread_vias(part, first, zone, begin, end, covered=covered)
         normal = np.stack([-heading[:, 1], heading[:, 0]], axis=1)
         result = []
         for index in range(len(frame.legs)):
@@ -165,7 +165,8 @@ class Measure:
         loose: events.Places = []
         own = self.owner[edges.labels[local.piece]] == part.group[frame.leg[local.window]]
         stroke = _strokes(self.copper.layers[part.layer])
-        events.own_layer(frame, local, own, stroke[local.piece], self._hidden(part, edges, local, own & ~stroke[local.piece]), sure, loose)
+        hidden = self._hidden(part, edges, local, own & ~stroke[local.piece])
+        events.own_layer(frame, local, own, stroke[local.piece], hidden, sure=sure, loose=loose)
         for other in range(len(self.copper.layers)):
             between = part.between(other)
             windows = np.flatnonzero(between[frame.leg])
@@ -175,7 +176,7 @@ class Measure:
             found = there.local(frame.windows.take(windows))
             found = _renumber(found, windows)
             part.kept[other] = (windows, found)
-            events.plane_layer(frame, found, self.wanted[there.labels[found.piece]], part.height[frame.leg], sure, loose)
+            events.plane_layer(frame, found, self.wanted[there.labels[found.piece]], part.height[frame.leg], sure=sure, loose=loose)
         exact = (
             np.concatenate([bends[0], bends[0], joints[0], joints[0]]),
             np.concatenate([bends[1], bends[2], joints[1], joints[2]]),
@@ -213,7 +214,7 @@ class Measure:
                 windows, found = part.kept.get(other, (np.empty(0, np.int64), None))
                 if found is None or len(np.setdiff1d(needed, windows, assume_unique=True)):
                     found = _renumber(there.local(frame.windows.take(needed)), needed)
-                few = cut(there, found, frame.windows, window[mine], s[mine], part.reach[leg[mine]], hairline=HAIRLINE)
+                few = cut(there, found, frame.windows, window[mine], s[mine], reach=part.reach[leg[mine]], hairline=HAIRLINE)
                 result[other] = (going, spread(few, mine, count))
                 station = np.repeat(mine, np.diff(few.first))
                 kept = self.wanted[few.label]
@@ -225,7 +226,7 @@ class Measure:
         return result
 
     def _spread_vias(
-        self, part: _Part, first: NDArray[np.int64], zone: NDArray[np.uint8], begin: Floats, end: Floats, covered: list[Floats]
+        self, part: _Part, first: NDArray[np.int64], zone: NDArray[np.uint8], begin: Floats, end: Floats, *, covered: list[Floats]
     ) -> None:
         for index, fact in enumerate(part.facts):
             if max(fact.barrels) < 0:

@@ -1,4 +1,4 @@
-"""A medial axis made straight where the copper is. In: chains of axis points and the edges they run between, mm; out: pieces of centreline, mm."""
+"""A medial axis made straight where the copper is. In: chains of axis points and the edges beside them, mm; out: centreline, mm."""
 
 from __future__ import annotations
 
@@ -52,9 +52,10 @@ def _bisector(e: int, f: int, start: Floats, end: Floats) -> tuple[Floats, Float
 
 
 def regular_chain(
-    points: Floats, faces: list[tuple[int, int]], widths: list[float], ends: tuple[int, int], start: Floats, end: Floats
+    points: Floats, faces: list[tuple[int, int]], widths: list[float], ends: tuple[int, int], edges: tuple[Floats, Floats]
 ) -> Chain:
     """A chain with its straight parts put on bisectors and the bends between them made corners."""
+    start, end = edges
     runs: list[tuple[int, int, tuple[Floats, Floats] | None]] = []  # first and last point, line
     width = float(np.median(widths))
     position = 0

@@ -49,7 +49,7 @@ class Strands:
         return Strands(self.net[keep], self.layer[keep], self.start[keep], self.end[keep], self.width[keep], self.link[keep])
 
 
-def strands_of(net: int, layer: int, start: Floats, end: Floats, width: Floats | float, link: bool = False) -> Strands:
+def strands_of(net: int, layer: int, start: Floats, end: Floats, width: Floats | float, *, link: bool = False) -> Strands:
     """Strands of one net on one layer; start, end (n, 2)."""
     count = len(start)
     return Strands(
@@ -73,7 +73,9 @@ class Pads:
     barrel: list[int] = field(default_factory=list)  # index of the barrel whose disc it is, -1 for a pad
     blob: list[bool] = field(default_factory=list)  # a pour: copper without a centreline
 
-    def add(self, net: int, layer: int, shape: shapely.Polygon, centre: tuple[float, float], barrel: int = -1, blob: bool = False) -> None:
+    def add(
+        self, net: int, layer: int, shape: shapely.Polygon, centre: tuple[float, float], *, barrel: int = -1, blob: bool = False
+    ) -> None:
         """Adds one."""
         self.net.append(net)
         self.layer.append(layer)
@@ -110,14 +112,14 @@ def gather(copper: Copper, nets: Nets) -> tuple[Strands, Pads]:
                 net = int(owner[pieces[0]])
                 reached = (barrel_net == net) & (barrels.first <= sheet.index) & (barrels.last >= sheet.index)
                 holes = (barrels.start[reached] + barrels.end[reached]) / 2
-                parts.append(_on_layer(net, sheet, pieces, pin_points.get((net, sheet.index), []), holes, pads))
+                parts.append(_on_layer(net, sheet, pieces, pin_points.get((net, sheet.index), []), holes, pads=pads))
     for barrel in np.flatnonzero(barrel_net >= 0).tolist():
         middle = (barrels.start[barrel] + barrels.end[barrel]) / 2
         disc = shapely.LineString([barrels.start[barrel], barrels.end[barrel]]).buffer(barrels.diameter[barrel] / 2)
         if (barrels.start[barrel] == barrels.end[barrel]).all():
             disc = shapely.Point(middle).buffer(barrels.diameter[barrel] / 2)
         for level in range(int(barrels.first[barrel]), int(barrels.last[barrel]) + 1):
-            pads.add(int(barrel_net[barrel]), level, disc, tuple(middle), barrel)
+            pads.add(int(barrel_net[barrel]), level, disc, tuple(middle), barrel=barrel)
     return Strands.join(parts), pads
 
 
@@ -146,7 +148,7 @@ def _pins(nets: Nets) -> list[BoardPin]:
 
 
 def _on_layer(
-    net: int, layer: LayerCopper, pieces: NDArray[np.int64], pins: list[tuple[float, float]], holes: Floats, pads: Pads
+    net: int, layer: LayerCopper, pieces: NDArray[np.int64], pins: list[tuple[float, float]], holes: Floats, *, pads: Pads
 ) -> Strands:
     """Strands of one net on one layer; its pads are added to `pads`."""
     image, objects = layer.image, layer.object[pieces]

@@ -97,7 +97,7 @@ def pad_zones(points: Floats, net: NDArray[np.int64], pads: PadShapes) -> tuple[
 
 
 def spread_teardrops(
-    zone: NDArray[np.uint8], begin: Floats, end: Floats, width: Floats, usual: float, open_ends: tuple[bool, bool]
+    zone: NDArray[np.uint8], begin: Floats, end: Floats, width: Floats, usual: float, *, open_ends: tuple[bool, bool]
 ) -> None:
     """Widens the zones at both ends of one leg over teardrops, in place: outwards while the copper is wider than usual and getting
     narrower. `open_ends`: a walk begins or ends there; where no pad is known the wide copper itself is the pad."""

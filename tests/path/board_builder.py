@@ -216,9 +216,9 @@ def _image(items: list[Item]) -> Image:
     n = len(items)
     minus, empty = np.full(n, -1, dtype=np.int32), np.empty(0)
     contours = Contours(np.empty(0, np.int32), np.zeros(1, np.int32), np.empty((0, 2)), np.empty((0, 2)), empty)
+    points = {name: np.array([getattr(i, name) for i in items], dtype=np.float64).reshape(-1, 2) for name in ("start", "end", "centre")}
+    kind, sweep = np.array([int(i.kind) for i in items], dtype=np.uint8), np.array([i.sweep for i in items], dtype=np.float64)
     return Image(
-        "f.gbr", {}, False, (), (), np.array([int(i.kind) for i in items], dtype=np.uint8), np.ones(n, dtype=np.bool_), minus, minus,
-        np.array([i.start for i in items], dtype=np.float64).reshape(-1, 2), np.array([i.end for i in items], dtype=np.float64).reshape(-1, 2),
-        np.array([i.centre for i in items], dtype=np.float64).reshape(-1, 2), np.array([i.sweep for i in items], dtype=np.float64), contours,
-        np.arange(1, n + 1, dtype=np.int32), minus, minus, minus, (), (), (),
+        "f.gbr", {}, False, (), (), kind, np.ones(n, dtype=np.bool_), minus, minus, points["start"], points["end"], points["centre"], sweep,
+        contours, np.arange(1, n + 1, dtype=np.int32), minus, minus, minus, (), (), (),
     )  # fmt: skip

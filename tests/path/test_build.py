@@ -376,3 +376,78 @@ def test_random_traces_keep_length_width_and_slot(
     (run,) = walk.runs
     assert np.allclose(run.stations.width[trace(run)], width, rtol=2e-3)
     assert spans(run, run.stations.coverage_below < 1) == [pytest.approx((1.0, 1.4), abs=5e-3)]
+
+
+def test_a_pad_on_the_way_ends_a_run_and_is_no_width() -> None:
+    board = with_plane().stroke(0, [(2, 5), (12, 5)], 0.15)
+    for x in (2, 7, 12):
+        board.flash(0, (x, 5), (0.5, 0.5))
+    walk = board.walk([(2, 5, 0), (12, 5, 0)], GROUND)
+    assert [run.along for run in walk.runs] == [pytest.approx((0, 5)), pytest.approx((5, 10))]
+    for run in walk.runs:
+        assert np.allclose(run.stations.width[trace(run)], 0.15)
+    assert spans(walk.runs[0], walk.runs[0].stations.zone == Zone.PAD)[-1] == pytest.approx((4.75, 5.0))
+
+
+@pytest.mark.parametrize("one", [False, True])
+def test_pads_drawn_as_regions(one: bool) -> None:
+    shapes = [shapely.LineString([(2, 5), (12, 5)]).buffer(0.075), shapely.box(1.75, 4.75, 2.25, 5.25), shapely.box(11.7, 4.6, 12.3, 5.4)]
+    board = with_plane()
+    for shape in [shapely.union_all(shapes)] if one else shapes:
+        board.region(0, shape)
+    walk = board.walk([(2, 5, 0), (12, 5, 0)], GROUND)
+    assert walk.length == pytest.approx(10.0, abs=0.01)
+    assert walk.branches == ()
+    (run,) = walk.runs
+    assert spans(run, trace(run)) == [pytest.approx((0.25, 9.7), abs=5e-3)]
+    assert np.allclose(run.stations.width[trace(run)], 0.15, atol=1e-6)
+
+
+def test_places_on_a_trace_begin_and_end_the_walk() -> None:
+    walk = with_plane().stroke(0, [(2, 5), (12, 5)], 0.15).walk([(3, 5.03, 0), (11, 5, 0)], GROUND)
+    assert walk.length == pytest.approx(8.0)
+    assert [branch.length for branch in walk.branches] == [pytest.approx(1.0, abs=1e-6), pytest.approx(1.0, abs=1e-6)]
+
+
+def test_a_branch_through_a_via_counts_on_the_other_layer() -> None:
+    board = with_plane(4, 1).stroke(0, [(2, 5), (12, 5)], 0.15).flash(0, (2, 5), (0.5, 0.5)).flash(0, (12, 5), (0.5, 0.5))
+    board.via((7, 5), 0.2, 0.45).stroke(3, [(7, 5), (7, 8)], 0.15)
+    walk = board.walk([(2, 5, 0), (12, 5, 0)], GROUND)
+    assert walk.vias == ()
+    (branch,) = walk.branches
+    assert (branch.layer, branch.at) == (3, (7.0, 5.0))
+    assert branch.tip == pytest.approx((7.0, 8.075), abs=1e-6)
+
+
+def test_fly_by_pads_lie_on_one_path() -> None:
+    board = with_plane().stroke(0, [(2, 5), (5, 5), (5, 6)], 0.15).stroke(0, [(5, 6), (8, 6), (12, 5)], 0.15)
+    for at in ((2, 5), (5, 6), (12, 5)):
+        board.flash(0, at, (0.4, 0.4))
+    walk = board.walk([(2, 5, 0), (5, 6, 0), (12, 5, 0)], GROUND)
+    assert [str(end) for end in walk.ends] == ["U2.1", "U3.1"]
+    assert [run.along for run in walk.runs] == [pytest.approx((0, 4)), pytest.approx((4, 7 + 17**0.5))]
+    assert walk.branches == ()
+
+
+def test_a_wide_trace_painted_with_two_strokes_has_one_centreline() -> None:
+    board = with_plane().stroke(0, [(2, 4.95), (12, 4.95)], 0.2).stroke(0, [(2, 5.05), (12, 5.05)], 0.2)
+    board.flash(0, (2, 5), (0.5, 0.5)).flash(0, (12, 5), (0.5, 0.5))
+    walk = board.walk([(2, 5, 0), (12, 5, 0)], GROUND)
+    (run,) = walk.runs
+    assert walk.branches == ()
+    assert walk.length == pytest.approx(10.0, abs=2e-3)
+    assert np.allclose(run.stations.width[trace(run)], 0.3, atol=1e-6)
+    assert np.allclose(run.stations.centre[trace(run)], 0.0, atol=2e-3)
+
+
+def test_the_order_of_drawing_changes_nothing() -> None:
+    board = neck(with_plane()).stroke(0, [(8, 5), (8, 7)], 0.12)
+    first = board.walk([(2, 5, 0), (12, 5, 0)], GROUND)
+    for seed in range(3):
+        order = np.random.default_rng(seed).permutation(len(board.items)).tolist()
+        other = board.moved(order=order).walk([(2, 5, 0), (12, 5, 0)], GROUND)
+        assert other.branches == first.branches
+        for a, b in zip(first.runs, other.runs, strict=True):
+            assert np.allclose(a.line, b.line, atol=1e-9)
+            assert np.allclose(a.stations.begin, b.stations.begin, atol=1e-9)
+            assert np.allclose(a.stations.width, b.stations.width, atol=1e-9)

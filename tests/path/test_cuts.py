@@ -31,7 +31,7 @@ def test_cuts_agree_with_shapely() -> None:
     edges = LayerEdges(layer, labels, windows.boxes(0.01))
     window = np.repeat(np.arange(count), 5)
     s = np.sort(rng.uniform(0, 1, (count, 5)), axis=1).ravel() * windows.length[window]
-    found = cut(edges, edges.local(windows), windows, window, s, np.full(len(s), 1.3))
+    found = cut(edges, edges.local(windows), windows, window, s, reach=np.full(len(s), 1.3))
     normal = np.stack([-windows.heading[:, 1], windows.heading[:, 0]], axis=1)
     low_window, high_window = np.full(len(s), -0.4), np.full(len(s), 0.7)
     wanted = np.array([True, False, True, False])
@@ -60,6 +60,6 @@ def test_hairline_slits_of_a_plane_are_closed() -> None:
     layer = board.copper().layers[0]
     windows = Windows(np.array([[5.0, 1.0]]), np.array([[1.0, 0.0]]), np.array([0.5]), np.array([4.0]))
     edges = LayerEdges(layer, np.zeros(3, dtype=np.int32), windows.boxes(0.01))
-    found = cut(edges, edges.local(windows), windows, np.array([0]), np.array([0.2]), np.array([4.0]), hairline=0.015)
+    found = cut(edges, edges.local(windows), windows, np.array([0]), np.array([0.2]), reach=np.array([4.0]), hairline=0.015)
     assert np.allclose(found.low, [-1.0, 2.02])
     assert np.allclose(found.high, [2.0, 4.0])

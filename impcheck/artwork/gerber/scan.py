@@ -11,9 +11,11 @@ from numpy.typing import NDArray
 
 from impcheck.artwork.gerber.notes import Notes
 
-# A piece starts at the first byte that cannot be part of a statement made of words like X or D with numbers, at a "%", or at a
-# comment. A lone "G" is matched too and passed over: that keeps the search free of alternatives, which doubles its speed.
-_PIECE = re.compile(rb"[^XYIJDMN0-9+\-.*\s](?:(?<=%)[^%]*%?|(?<=G)(?:\s*0*4(?![0-9])[^*]*\*?)?|(?<![%G])[^*%]*\*?)")
+# The G of every comment is first replaced by a byte that occurs in no statement. A piece then starts at the first byte that cannot be
+# part of a statement made of words like X or D with numbers: one class and no alternatives, which is what makes the search fast.
+_MARK = b"\x01"
+_COMMENT = re.compile(rb"G(\s*0*4)(?![0-9])")
+_PIECE = re.compile(rb"[^XYIJDGMN0-9+\-.*\s](?:(?<=%)[^%]*%?|(?<=\x01)\s*0*4(?![0-9])[^*]*\*?|(?<![%\x01])[^*%]*\*?)")
 _CODE = re.compile(rb"[XY]\s*[-+]?[0-9]|G(?!\s*0*4(?![0-9]))\s*[0-9]|[DM]0*[0-9]{1,2}\s*$")
 _END = re.compile(rb"M\s*(?:0*2|0+|30)\s*\*")
 _PADDING = b"\x00\x1a \t\r\n\f\v"
@@ -48,11 +50,9 @@ def scan(data: bytes, notes: Notes) -> Scan:
     ends = _END.finditer(data, 0, end)
     last = next(ends, None)
     last_at = last.start() if last else end
-    for match in _PIECE.finditer(data, 0, end):
+    for match in _PIECE.finditer(_marked(data), 0, end):
         start, stop = match.span()
         first = data[start]
-        if first == 71 and stop == start + 1:
-            continue
         if last_at < start:  # outside of every piece, so it is the code
             break
         while last_at < stop and last:
@@ -67,7 +67,7 @@ def scan(data: bytes, notes: Notes) -> Scan:
             if (b"\n" in text or b"\r" in text) and not text.startswith(b"AM"):
                 _refuse_code_inside(text, start + 1, notes)
             pieces.append(Piece(start, text, False))
-        elif first == 71:  # G04
+        elif first == 71 and stop > start + 1:  # G04
             if data[stop - 1] != 42:
                 raise notes.fatal(start, "the file ends inside a comment", "the file is cut off; export it again")
             pieces.append(Piece(start, data[start : stop - 1], True))
@@ -90,6 +90,11 @@ def scan(data: bytes, notes: Notes) -> Scan:
     else:
         _refuse_cut_end(data, end, notes)
     return Scan(plain[:end], tuple(pieces))
+
+
+def _marked(data: bytes) -> bytes:
+    marked = data.replace(_MARK, b"?").replace(b"G04", _MARK + b"04")
+    return _COMMENT.sub(_MARK + rb"\1", marked) if _COMMENT.search(marked) else marked
 
 
 def refuse_other_files(data: bytes, notes: Notes) -> None:

@@ -14,7 +14,7 @@ from impcheck.artwork.image import Bools, Floats
 Offsets = NDArray[np.int64]
 Codes = NDArray[np.int32]  # -1 where a row has none
 
-_BLANK, _DIGIT, _LETTER, _STAR, _SIGN, _DOT = range(6)
+_BLANK, _DIGIT, _SIGN, _DOT, _LETTER, _STAR = range(6)
 _CLASS = np.zeros(256, np.uint8)
 _CLASS[list(b"0123456789")] = _DIGIT
 _CLASS[list(b"XYIJDGMN")] = _LETTER
@@ -65,10 +65,9 @@ class Rows:
 def rows_of(plain: NDArray[np.uint8], notes: Notes) -> Rows:
     """Decodes the statements; plain (bytes,) as from `scan`. Malformed numbers are noted as errors, and read as 0."""
     kind = _CLASS[plain]
-    is_token = (kind == _LETTER) | (kind == _STAR)
-    token_at = np.flatnonzero(is_token)
+    token_at = np.flatnonzero(kind >= _LETTER)
     letter = plain[token_at]
-    value, digits, decimal = _numbers(plain, kind, is_token, token_at, notes)
+    value, digits, decimal = _numbers(plain, kind, token_at, notes)
     word = letter != 42
     first = np.ones(len(token_at), np.bool_)
     first[1:] = ~word[:-1] | (letter[:-1] == ord("D"))  # a row begins after a "*", and after a D code in mid statement
@@ -100,25 +99,27 @@ def rows_of(plain: NDArray[np.uint8], notes: Notes) -> Rows:
     return Rows(offset, axes, d, *groups, ended=ended)
 
 
-def _numbers(
-    plain: NDArray[np.uint8], kind: NDArray[np.uint8], is_token: Bools, token_at: Offsets, notes: Notes
-) -> tuple[Floats, NDArray[np.int64], Bools]:
+def _numbers(plain: NDArray[np.uint8], kind: NDArray[np.uint8], token_at: Offsets, notes: Notes) -> tuple[Floats, NDArray[np.int64], Bools]:
     """Value, number of digits and decimal point of the number behind each token; blanks inside a number do not matter."""
-    token = np.cumsum(is_token, dtype=np.int32)
     count = len(token_at)
-    digit_at = np.flatnonzero(kind == _DIGIT)
-    owner = token[digit_at] - 1
-    if len(owner) and owner[0] < 0:
+    behind = np.cumsum(kind == _DIGIT, dtype=np.int32)  # digits up to and with each byte
+    before = behind[token_at].astype(np.int64)
+    total = int(behind[-1]) if len(behind) else 0
+    digits = np.diff(before, append=total)
+    digit_at = np.zeros(0, np.int64)
+    if total and (not count or before[0] > 0):
+        digit_at = np.flatnonzero(kind == _DIGIT)
         notes.error(int(digit_at[0]), "a number without a letter before it", "a statement starts with a letter such as X, G or D")
-        digit_at = digit_at[owner >= 0]
-        owner = owner[owner >= 0]
-    digits = np.bincount(owner, minlength=count).astype(np.int64)
-    behind = np.cumsum(digits)
-    exponent = behind[owner] - 1 - np.arange(len(owner))
-    value = np.bincount(owner, weights=(plain[digit_at] - 48) * _POWERS[np.minimum(exponent, 16)], minlength=count).astype(np.float64)
+    value = _run_values(plain, kind, token_at, digits)
+    if value is None:
+        digit_at = np.flatnonzero(kind == _DIGIT)
+        owner = np.searchsorted(token_at, digit_at) - 1
+        digit_at, owner = digit_at[owner >= 0], owner[owner >= 0]
+        exponent = (before + digits)[owner] - behind[digit_at]
+        value = np.bincount(owner, weights=(plain[digit_at] - 48) * _POWERS[np.minimum(exponent, 16)], minlength=count).astype(np.float64)
     star = plain[token_at] == 42
     for k in np.flatnonzero(star & (digits > 0))[:50]:
-        at = int(digit_at[np.searchsorted(owner, k)])
+        at = int(token_at[k]) + 1 + int(np.argmax(kind[token_at[k] + 1 :] == _DIGIT))
         notes.error(at, "a number without a letter before it", "a statement starts with a letter such as X, G or D")
     for k in np.flatnonzero(digits > MOST_DIGITS)[:50]:
         if not _is_zero_padded(plain, token_at, int(k)):
@@ -127,17 +128,17 @@ def _numbers(
 
     sign_at = np.flatnonzero(kind == _SIGN)
     if len(sign_at):
-        owner = token[sign_at] - 1
-        before = np.searchsorted(digit_at, sign_at) - (behind - digits)[owner]  # digits between the letter and the sign
+        owner = np.searchsorted(token_at, sign_at) - 1
+        late = behind[sign_at] - before[owner] if count else np.ones(len(owner))  # digits between the letter and the sign
         again = np.zeros(len(owner), np.bool_)
         again[1:] = owner[1:] == owner[:-1]
-        for k in np.flatnonzero((before != 0) | again | (owner < 0) | star[owner])[:50]:
+        for k in np.flatnonzero((late != 0) | again | (owner < 0) | (star[owner] if count else False))[:50]:
             notes.error(int(sign_at[k]), f"'{chr(plain[sign_at[k]])}' in a wrong place", "a sign stands between the letter and the number")
         minus = owner[plain[sign_at] == ord("-")]
         value[minus] = -value[minus]
 
     decimal = np.zeros(count, np.bool_)
-    for owner_of_dot in np.unique(token[np.flatnonzero(kind == _DOT)] - 1):
+    for owner_of_dot in np.unique(np.searchsorted(token_at, np.flatnonzero(kind == _DOT)) - 1):
         k = int(owner_of_dot)
         text = (
             bytes(plain[token_at[k] + 1 : token_at[k + 1] if k + 1 < count else len(plain)]).translate(None, b" \t\r\n\f\v")
@@ -149,6 +150,28 @@ def _numbers(
         else:
             notes.error(int(token_at[max(k, 0)]), f"'{text[:24].decode()}' is no number", "write digits with at most one decimal point")
     return value, digits, decimal
+
+
+def _run_values(plain: NDArray[np.uint8], kind: NDArray[np.uint8], token_at: Offsets, digits: NDArray[np.int64]) -> Floats | None:
+    """Values where every number is one run of digits right behind its letter and sign (nearly every file); None where one is not."""
+    value = np.zeros(len(token_at))
+    mine = np.flatnonzero(digits)
+    if not len(mine):
+        return value
+    at = token_at[mine] + 1
+    at += kind[np.minimum(at, len(kind) - 1)] == _SIGN
+    left = digits[mine]
+    if np.any(at + left > len(plain)) or left.max() > MOST_DIGITS:
+        return None
+    sums = np.zeros(len(mine))
+    for step in range(int(left.max())):
+        going = np.flatnonzero(left > step) if step else slice(None)
+        digit = plain[at[going] + step] - 48  # wraps around to a large number below "0"
+        if np.any(digit > 9):
+            return None
+        sums[going] = sums[going] * 10.0 + digit
+    value[mine] = sums
+    return value
 
 
 def _is_zero_padded(plain: NDArray[np.uint8], token_at: Offsets, k: int) -> bool:
