@@ -10,7 +10,7 @@ from functools import cache
 
 from quantiphy import Quantity
 
-_NUMBER = re.compile(r"([+-]?(?:\d{1,30}(?:\.\d{0,30})?|\.\d{1,30})(?:[eE][+-]?\d{1,2})?)\s*(\S.*)?")
+_NUMBER = re.compile(r"([+-]?(?:\d{1,30}(?:\.\d{0,30})?|\.\d{1,30})(?:[eE][+-]?\d{1,2})?)\s*([^\s\d.,+-][^\d,]*)?")
 
 # exact by definition: 1 inch = 25.4 mm (international yard and pound agreement of 1959), 1 mil = 1/1000 inch
 _INCHES = {"mil": "0.0254", "mils": "0.0254", "thou": "0.0254", "in": "25.4", "inch": "25.4", '"': "25.4"}

@@ -162,7 +162,7 @@ class Program:
                 self._tools.pop(code, None)
             return
         if not self._header:
-            self._tool = code if code else None
+            self._tool = code if code or 0 in self._tools else None  # T0 puts the tool away, unless a file numbers from 0
             if unknown.strip() and re.match(r"[XYG]", unknown.strip()):
                 self._words(re.sub(r"^T\d+", "", line) if not size else unknown, number)
 

@@ -1,4 +1,4 @@
-"""What one fabrication file is. In: its first bytes and its name; out: its Role (copper layer, mask, outline, drills) and how it is known."""
+"""What one fabrication file is. In: its first bytes and its name; out: its Role (copper, mask, outline, drill) and how that is known."""
 
 from __future__ import annotations
 
@@ -45,7 +45,8 @@ _GERBER = re.compile(
     rb"%\s*(?:FS|MO|AD|AM|LP|TF|IN|IP|OF|SF|AS|LN|SR)|\bG04\b[^*]*\*|^\s*(?:G54)?D[1-9]\d+\*|X-?\d+(?:Y-?\d+)?D0?[123]\*", re.MULTILINE
 )
 _EXCELLON = re.compile(
-    rb"^[ \t]*(?:M48|T\d{1,5}(?:[CFSBHZ]\d{0,9}\.?\d{1,9}){1,6})[ \t]*(?:[;(].*)?\r?$|^[ \t]*%[ \t]*\r?\n[ \t]*(?:T\d|G\d|M\d|X|Y)", re.MULTILINE
+    rb"^[ \t]*(?:M48|T\d{1,5}(?:[CFSBHZ]\d{0,9}\.?\d{1,9}){1,6})[ \t]*(?:[;(].*)?\r?$|^[ \t]*%[ \t]*\r?\n[ \t]*(?:T\d|G\d|M\d|X|Y)",
+    re.MULTILINE,
 )
 _EXCELLON_BODY = re.compile(rb"^[ \t]*T\d{1,4}[ \t]*\r?\n[ \t]*(?:G0?5[ \t]*\r?\n[ \t]*)?[XY][-+]?[\d.]", re.MULTILINE)
 _IPC356 = re.compile(rb"^(?:P  (?:JOB|UNITS|VER|TITLE|CODE|NUM|REV|IMAGE|NNAME)\b?|[03][1-4]7.{17,}[X+\- \d])", re.MULTILINE)
@@ -110,7 +111,7 @@ def role_of_function(function: Sequence[str], source: Source) -> Role:
 def role_of_name(name: str, kind: str) -> Role:
     """The role a file's name suggests, by the habits of layout tools. `kind` is what its content looks like: a drill file is one by content."""
     part, side, order, plated = role_by_name(name)
-    if kind == "excellon" or (kind == "" and name.lower().endswith(_DRILL_SUFFIXES)):  # an empty drill file is to be complained of
+    if kind == "excellon" or (kind == "" and name.lower().endswith(_DRILL_SUFFIXES)):  # empty ones are told of later
         return Role("drill", Source.NAME, plated=plating_in(name))
     if kind in ("netlist", "job", "binary") or (part == "drill" and kind == "gerber"):
         return Role("other", Source.NAME)

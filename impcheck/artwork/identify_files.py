@@ -58,7 +58,12 @@ def roles_of(heads: Heads, job_functions: Mapping[str, Sequence[str]]) -> tuple[
         listed = role_of_function(job_functions.get(name, ()), Source.JOB_FILE)
         if said.part == "copper" and said.layer is None:  # an old or broken attribute: it does not say which layer
             said = UNKNOWN
-        if said.part and listed.part and (said.part, said.layer, said.side) != (listed.part, listed.layer, listed.side) and listed.part != "other":
+        if (
+            said.part
+            and listed.part
+            and (said.part, said.layer, said.side) != (listed.part, listed.layer, listed.side)
+            and listed.part != "other"
+        ):
             text = f"the job file calls this {called(listed)}, its file attribute {called(said)}; the attribute was followed"
             remarks.append(Remark(RemarkKind.DISAGREEMENT, text, name))
         roles[name] = said if said.part else listed if listed.part else role_of_name(name, kind)
@@ -68,7 +73,13 @@ def roles_of(heads: Heads, job_functions: Mapping[str, Sequence[str]]) -> tuple[
 def called(role: Role) -> str:
     """A role in words."""
     if role.part == "copper":
-        return f"copper layer {role.layer}" if role.layer else f"the {role.side} copper" if role.side in ("top", "bottom") else "an inner copper layer"
+        return (
+            f"copper layer {role.layer}"
+            if role.layer
+            else f"the {role.side} copper"
+            if role.side in ("top", "bottom")
+            else "an inner copper layer"
+        )
     if role.part == "mask":
         return f"the {role.side} solder mask"
     return {"outline": "the board's outline", "drill": "a drill file"}.get(role.part, "no part of the copper")
@@ -122,9 +133,10 @@ class _Identifier:
             if item.file is not None:
                 role = Role("copper", Source.BOARD_FILE, layer=index + 1)
                 self.parts.copper[index] = self.claim(item.file, item.line, f"copper layer {item.name}", role)
-                self.quarrel |= False
         if self.plan.outline is not None:
-            self.parts.outline = self.claim(self.plan.outline.name, self.plan.outline.line, "the outline", Role("outline", Source.BOARD_FILE))
+            self.parts.outline = self.claim(
+                self.plan.outline.name, self.plan.outline.line, "the outline", Role("outline", Source.BOARD_FILE)
+            )
         for wish in self.plan.drills:
             name = self.claim(wish.file, wish.line, "a drill file", Role("drill", Source.BOARD_FILE))
             if name is not None:
@@ -139,7 +151,9 @@ class _Identifier:
         named = [item.file is not None for item in self.stackup.coppers]
         for source in (Source.ATTRIBUTE, Source.JOB_FILE, Source.NAME):
             found = self.of("copper", source)
-            layers = self.by_name(found, named) if source is Source.NAME else {name: role.layer for name, role in found.items() if role.layer}
+            layers = (
+                self.by_name(found, named) if source is Source.NAME else {name: role.layer for name, role in found.items() if role.layer}
+            )
             wanted: dict[int, list[str]] = {}
             for name, layer in sorted(layers.items()):
                 wanted.setdefault(layer, []).append(name)
@@ -222,7 +236,9 @@ class _Identifier:
     def outline(self) -> None:
         if self.plan.outline is not None:
             return
-        candidates = {source: sorted(self.of("outline", source), key=_likeness) for source in (Source.ATTRIBUTE, Source.JOB_FILE, Source.NAME)}
+        candidates = {
+            source: sorted(self.of("outline", source), key=_likeness) for source in (Source.ATTRIBUTE, Source.JOB_FILE, Source.NAME)
+        }
         self.parts.outline = self.single("outline", "the board's outline", candidates)
 
     def drills(self) -> None:
@@ -233,7 +249,9 @@ class _Identifier:
                     self.problems.add(name, 0, said, "correct the stackup, or name the layers under `drills:`")
                 self.parts.drills[name] = (role, None)
         listed = {name for name, (_, wish) in self.parts.drills.items() if wish is not None}
-        same = {(role.layer, role.last, role.plated) for name, (role, _) in self.parts.drills.items() if self.heads.kinds[name] == "excellon"}
+        same = {
+            (role.layer, role.last, role.plated) for name, (role, _) in self.parts.drills.items() if self.heads.kinds[name] == "excellon"
+        }
         for name, (role, _) in list(self.parts.drills.items()):
             if name not in listed and self.heads.kinds[name] == "gerber" and (role.layer, role.last, role.plated) in same:
                 del self.parts.drills[name]

@@ -26,7 +26,10 @@ _OTHER_WORDS = (
     r"silk|legend|overlay|screen|paste|cream|stencil|assembl|assy|fab(?:rication)?$|drill[_ -]?(?:map|drawing|chart|dwg|guide|table)"
     r"|courtyard|adhesive|glue|keep|dwgs?\b|drawing|comments?\b|eco\d|readme|pick|place|bom|carbon|peel|v[-_ ]?(?:cut|score)|margin|user\d?\b"
 )
-_TOP, _BOTTOM = r"top|front|component ?(?:side|mask)|\bf\b|\bcmp\b|\bcs\b|primary", r"bot(?:tom)?|back|solder ?side|\bb\b|\bsol\b|\bss\b|secondary"
+_TOP, _BOTTOM = (
+    r"top|front|component ?(?:side|mask)|\bf\b|\bcmp\b|\bcs\b|primary",
+    r"bot(?:tom)?|back|solder ?side|\bb\b|\bsol\b|\bss\b|secondary",
+)
 
 
 @cache
@@ -61,7 +64,9 @@ def _by_words(stem: str) -> Named:
         return "outline", "", (), None
     if re.search(r"\bdrills?\b|\bpth\b|\bnpth\b|holes", words):
         return "drill", "", (), None
-    match = re.search(r"\b(?:in|inn|inner|internal|int|internalplane|inner l|inner layer|innerlayer|mid|midlayer|mid layer|plane) ?(\d{1,2})\b", words)
+    match = re.search(
+        r"\b(?:in|inn|inner|internal|int|internalplane|inner l|inner layer|innerlayer|mid|midlayer|mid layer|plane) ?(\d{1,2})\b", words
+    )
     if match:
         return "copper", "inner", (3, int(match[1])), None
     match = re.search(r"\b(?:copper |cu |signal )?(?:l|layer|ly|lay|lyr|group) ?(\d{1,2})\b", words)

@@ -225,4 +225,5 @@ def test_reading_takes_at_most_a_quarter_of_gerbonaras_time() -> None:
             gerbonara.GerberFile.from_string(text)
         theirs += time.perf_counter() - begin
         mine += min(best)
+    print(f"{mine:.3f} s against {theirs:.3f} s: {mine / theirs:.3f}")
     assert mine <= 0.25 * theirs

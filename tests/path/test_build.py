@@ -410,7 +410,8 @@ def test_places_on_a_trace_begin_and_end_the_walk() -> None:
 
 
 def test_a_branch_through_a_via_counts_on_the_other_layer() -> None:
-    board = with_plane(4, 1).stroke(0, [(2, 5), (12, 5)], 0.15).flash(0, (2, 5), (0.5, 0.5)).flash(0, (12, 5), (0.5, 0.5))
+    board = with_plane(4, 1, shapely.Point(7, 5).buffer(0.4)).stroke(0, [(2, 5), (12, 5)], 0.15)
+    board.flash(0, (2, 5), (0.5, 0.5)).flash(0, (12, 5), (0.5, 0.5))
     board.via((7, 5), 0.2, 0.45).stroke(3, [(7, 5), (7, 8)], 0.15)
     walk = board.walk([(2, 5, 0), (12, 5, 0)], GROUND)
     assert walk.vias == ()

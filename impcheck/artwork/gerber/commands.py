@@ -69,31 +69,30 @@ class Commands:
         self._open_blocks: list[int] = []
         names = self.attributes.objects
         seen: dict[bytes, tuple[int, int]] = {}  # a board repeats its nets; each text is taken apart once
-        for piece in pieces:
-            text = piece.text
+        for offset, text, comment in pieces:
             known = seen.get(text)
             if known:
-                names.change(piece.offset, *known)
-            elif piece.comment:
-                self._comment(piece)
+                names.change(offset, *known)
+            elif comment:
+                self._comment(text, offset)
             elif text == b"TD*" and not self.attributes.aperture:
-                names.change(piece.offset, *names.deleted(""))
+                names.change(offset, *names.deleted(""))
             elif text.startswith((b"TO.N,", b"TO.P,", b"TO.C,")) and text.find(b"*") == len(text) - 1 and not _LINE_END.search(text):
-                name, values = fields(self._text(text[2:-1], piece.offset).strip())
+                name, values = fields(self._text(text[2:-1], offset).strip())
                 seen[text] = names.entry(name, values)
-                names.change(piece.offset, *seen[text])
+                names.change(offset, *seen[text])
             else:
-                self._piece(piece)
+                self._piece(text, offset)
 
     def transform_index(self, transform: Transform) -> int:
         """Index of a transform in the table, which grows."""
         return self.transforms.setdefault(transform, len(self.transforms))
 
-    def _comment(self, piece: Piece) -> None:
-        if b"#@!" in piece.text:
-            match = _STANDARD_COMMENT.fullmatch(self._text(piece.text, piece.offset))
+    def _comment(self, raw: bytes, offset: int) -> None:
+        if b"#@!" in raw:
+            match = _STANDARD_COMMENT.fullmatch(self._text(raw, offset))
             if match:
-                self._attribute(match[1], match[2], piece.offset)
+                self._attribute(match[1], match[2], offset)
 
     def _text(self, raw: bytes, offset: int) -> str:
         try:
@@ -102,14 +101,13 @@ class Commands:
             self.notes.odd("text that is not UTF-8 is read as Latin-1", offset)
             return raw.decode("latin-1")
 
-    def _piece(self, piece: Piece) -> None:
-        text = self._text(piece.text, piece.offset)
-        parts = text.split("*")
+    def _piece(self, text: bytes, offset: int) -> None:
+        parts = self._text(text, offset).split("*")
         if parts[-1].strip():
-            self.notes.odd("a %...% command does not end with *", piece.offset)
+            self.notes.odd("a %...% command does not end with *", offset)
         elif len(parts) == 1:
             return
-        at = piece.offset + 1
+        at = offset + 1
         position = 0
         while position < len(parts):
             raw = parts[position]

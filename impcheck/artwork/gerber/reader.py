@@ -54,8 +54,8 @@ def read_gerber(data: bytes, file: str, limits: Limits = _DEFAULTS) -> Image:
 
 def _first_unit(pieces: tuple[Piece, ...], rows: Rows, notes: Notes) -> float:
     """mm of the unit that holds from the start: the first MO, else the first G70 or G71, else inches."""
-    for piece in pieces:
-        match = None if piece.comment or b"MO" not in piece.text else re.search(rb"(?:^|\*)\s*MO\s*(MM|IN)", piece.text)
+    for _, text, comment in pieces:
+        match = None if comment or b"MO" not in text else re.search(rb"(?:^|\*)\s*MO\s*(MM|IN)", text)
         if match:
             return 1.0 if match[1] == b"MM" else INCH
     said = rows.unit[rows.unit >= 0]

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass
-from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,6 +13,7 @@ from impcheck.artwork.gerber.notes import Notes
 # The G of every comment is first replaced by a byte that occurs in no statement. A piece then starts at the first byte that cannot be
 # part of a statement made of words like X or D with numbers: one class and no alternatives, which is what makes the search fast.
 _MARK = b"\x01"
+_STAR_AND_BLANKS = b"*" + b" " * 1023
 _COMMENT = re.compile(rb"G(\s*0*4)(?![0-9])")
 _PIECE = re.compile(rb"[^XYIJDGMN0-9+\-.*\s](?:(?<=%)[^%]*%?|(?<=\x01)\s*0*4(?![0-9])[^*]*\*?|(?<![%\x01])[^*%]*\*?)")
 _CODE = re.compile(rb"[XY]\s*[-+]?[0-9]|G(?!\s*0*4(?![0-9]))\s*[0-9]|[DM]0*[0-9]{1,2}\s*$")
@@ -21,12 +21,9 @@ _END = re.compile(rb"M\s*(?:0*2|0+|30)\s*\*")
 _PADDING = b"\x00\x1a \t\r\n\f\v"
 
 
-class Piece(NamedTuple):
-    """One part of the file that is not made of plain statements."""
-
-    offset: int
-    text: bytes  # without the "%" around a command or the "*" after a comment
-    comment: bool
+# One part of the file that is not made of plain statements: its offset; its text without the "%" around a command or the "*" after a
+# comment; whether it is a comment. A plain tuple, because there are tens of thousands of them.
+Piece = tuple[int, bytes, bool]
 
 
 @dataclass(frozen=True)
@@ -43,10 +40,8 @@ def scan(data: bytes, notes: Notes) -> Scan:
     """Takes the file apart. Raises InputError where it is no Gerber file at all or a command is never closed."""
     end = len(data.rstrip(_PADDING))
     refuse_other_files(data[:end], notes)
-    plain = np.frombuffer(data, np.uint8, end).copy()
+    plain = bytearray(data[:end])
     pieces: list[Piece] = []
-    begins: list[int] = []
-    behinds: list[int] = []
     ends = _END.finditer(data, 0, end)
     last = next(ends, None)
     last_at = last.start() if last else end
@@ -66,30 +61,24 @@ def scan(data: bytes, notes: Notes) -> Scan:
                 )
             if (b"\n" in text or b"\r" in text) and not text.startswith(b"AM"):
                 _refuse_code_inside(text, start + 1, notes)
-            pieces.append(Piece(start, text, False))
+            pieces.append((start, text, False))
         elif first == 71 and stop > start + 1:  # G04
             if data[stop - 1] != 42:
                 raise notes.fatal(start, "the file ends inside a comment", "the file is cut off; export it again")
-            pieces.append(Piece(start, data[start : stop - 1], True))
+            pieces.append((start, data[start : stop - 1], True))
         else:
             shown = data[start:stop].split(b"*")[0].strip()[:24].decode("latin-1")
             notes.error(
                 start, f"unknown statement at '{shown}'", "a Gerber statement is made of X, Y, I, J, D, G and M codes and ends with *"
             )
-        begins.append(start)
-        behinds.append(stop)
-    depth = np.zeros(end + 1, np.int8)
-    depth[begins] += 1
-    depth[behinds] -= 1
-    plain[np.cumsum(depth[:end], dtype=np.int8) > 0] = 32
-    plain[begins] = 42
+        plain[start:stop] = _STAR_AND_BLANKS[: stop - start] if stop - start <= len(_STAR_AND_BLANKS) else b"*".ljust(stop - start)
     if last:
         if data[last.end() : end].strip(_PADDING):
             notes.odd("what follows the end of the file (M02) is not read", last.end() + 1)
         end = last.end()
     else:
         _refuse_cut_end(data, end, notes)
-    return Scan(plain[:end], tuple(pieces))
+    return Scan(np.frombuffer(plain, np.uint8, end), tuple(pieces))
 
 
 def _marked(data: bytes) -> bytes:
