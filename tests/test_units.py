@@ -77,7 +77,9 @@ def test_any_text_gives_a_number_or_a_sentence(text):
 
 
 @settings(max_examples=100, deadline=None)
-@given(st.decimals(min_value="0.001", max_value="999", places=3), st.sampled_from([("mm", 1.0), ("um", 1e-3), ("mil", 0.0254), ("in", 25.4)]))
+@given(
+    st.decimals(min_value="0.001", max_value="999", places=3), st.sampled_from([("mm", 1.0), ("um", 1e-3), ("mil", 0.0254), ("in", 25.4)])
+)
 def test_a_length_is_the_number_times_its_unit(value, unit):
     assert units.length(f"{value}{unit[0]}") == pytest.approx(float(value) * unit[1], rel=1e-15)
 

@@ -1,9 +1,9 @@
-"""Reads everything a board consists of. In: the path of a board file; out: its Artwork, in mm, with remarks on guesses and disagreements."""
+"""Reads everything a board consists of. In: the path of a board file; out: its Artwork, in mm, and remarks on what was guessed."""
 
 from __future__ import annotations
 
-from collections.abc import Callable
-from dataclasses import replace
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 from impcheck.artwork.assemble_drills import DrillSources, read_drills
@@ -11,7 +11,7 @@ from impcheck.artwork.assemble_stackup import settle_stackup
 from impcheck.artwork.boardfile import Plan, check_layer_names, parse_board_file
 from impcheck.artwork.gerber import read_gerber
 from impcheck.artwork.identify import Source, role_of_function
-from impcheck.artwork.identify_files import Heads, Parts, identify, roles_of, sniff
+from impcheck.artwork.identify_files import Heads, Parts, identify, know, sniff
 from impcheck.artwork.image import Image
 from impcheck.artwork.ipc356 import read_ipc356
 from impcheck.artwork.jobfile import Job, read_job
@@ -49,17 +49,17 @@ def _read(plan: Plan, package: Package, limits: Limits, problems: Problems, prog
     progress("looking at the files")
     remarks = list(package.remarks)
     heads = sniff(package, problems)
-    job, listed = _job(package, heads, limits, problems, remarks)
-    roles, disagreements = roles_of(heads, listed)
-    remarks += disagreements
+    listed = _job(package, heads, limits, problems, remarks)
+    known = know(heads, listed.functions)
+    remarks += known.remarks
     netlist_file = _netlist_file(plan, package, heads, problems)
-    stackup = settle_stackup(plan, job, problems, remarks)
+    stackup = settle_stackup(plan, listed.job, problems, remarks)
     if stackup is None:
         _check_files_exist(plan, package, problems)
         raise InputError(problems.found)
     if plan.stackup is None:
         check_layer_names(plan, [item.name for item in stackup.coppers], problems)
-    parts = identify(plan, stackup, package, heads, roles, problems)
+    parts = identify(plan, stackup, package, known, problems)
     remarks += parts.remarks
 
     wanted = dict.fromkeys(name for name in (*parts.copper, parts.mask_top, parts.mask_bottom, parts.outline) if name is not None)
@@ -67,7 +67,7 @@ def _read(plan: Plan, package: Package, limits: Limits, problems: Problems, prog
     for name in wanted:
         progress(f"reading {name}")
         try:
-            images[name] = _with_polarity(read_image(package.read(name), name, limits), job)
+            images[name] = _with_polarity(read_image(package.read(name), name, limits), listed)
         except InputError as error:
             problems.take(error)
     outline = images.get(parts.outline) if parts.outline is not None else None
@@ -79,9 +79,8 @@ def _read(plan: Plan, package: Package, limits: Limits, problems: Problems, prog
         except InputError as error:
             problems.take(error)
     coppers = tuple(images[name] for name in parts.copper if name in images)
-    drills = read_drills(
-        parts.drills, DrillSources(plan, stackup, package, heads, outline, coppers, netlist, limits), problems, remarks, progress
-    )
+    sources = DrillSources(package, heads.kinds, stackup, outline, coppers, netlist, limits, parts.drills, remarks)
+    drills = read_drills(sources, problems, progress)
     problems.raise_if_any()
 
     remarks += _absences(plan, stackup.mask_top is not None or stackup.mask_bottom is not None, parts)
@@ -126,37 +125,44 @@ def _package(plan: Plan, limits: Limits, problems: Problems) -> Package | None:
         return None
 
 
-def _job(
-    package: Package, heads: Heads, limits: Limits, problems: Problems, remarks: list[Remark]
-) -> tuple[Job | None, dict[str, tuple[str, ...]]]:
-    """The job file, and the file function it gives to each file of the package."""
+@dataclass(frozen=True)
+class _Listed:
+    """What the job file says of the package's files, by their path in it."""
+
+    job: Job | None = None
+    functions: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
+    negative: frozenset[str] = frozenset()
+
+
+def _job(package: Package, heads: Heads, limits: Limits, problems: Problems, remarks: list[Remark]) -> _Listed:
     found = [name for name, kind in heads.kinds.items() if kind == "job" or name.lower().endswith(".gbrjob")]
     if len(found) > 1:
         problems.add(found[-1], 0, f"there is another job file, {found[0]}", "keep one of them")
     if len(found) != 1:
-        return None, {}
+        return _Listed()
     try:
         job = read_job(package.read(found[0]), found[0], limits)
     except InputError as error:
         problems.take(error)
-        return None, {}
-    remarks.extend(getattr(job, "remarks", ()))
+        return _Listed()
     folder = found[0].rpartition("/")[0]
-    listed: dict[str, tuple[str, ...]] = {}
+    functions: dict[str, tuple[str, ...]] = {}
+    negative = set()
     for path, function in job.functions.items():
         name = package.find(f"{folder}/{path}" if folder else path) or package.find(path)
-        if name is not None:
-            listed[name] = function
-        elif role_of_function(function, Source.JOB_FILE).part not in ("", "other"):
-            remarks.append(Remark(RemarkKind.ODD, f"the job file lists '{path}', which is not there", found[0]))
-    return job, listed
+        if name is None:
+            if role_of_function(function, Source.JOB_FILE).part not in ("", "other"):
+                remarks.append(Remark(RemarkKind.ODD, f"the job file lists '{path}', which is not there", found[0]))
+            continue
+        functions[name] = function
+        if job.polarities.get(path, "").casefold() == "negative":
+            negative.add(name)
+    return _Listed(job, functions, frozenset(negative))
 
 
-def _with_polarity(image: Image, job: Job | None) -> Image:
+def _with_polarity(image: Image, listed: _Listed) -> Image:
     """An image as negative where only the job file says so."""
-    polarities = getattr(job, "polarities", None) or {}
-    said = polarities.get(image.file) or polarities.get(image.file.rpartition("/")[2]) or ""
-    if str(said).casefold() == "negative" and not image.negative and ".FilePolarity" not in image.attributes:
+    if image.file in listed.negative and not image.negative and ".FilePolarity" not in image.attributes:
         return replace(image, negative=True)
     return image
 

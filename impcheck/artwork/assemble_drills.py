@@ -8,12 +8,11 @@ from dataclasses import dataclass, replace
 import numpy as np
 from scipy.spatial import cKDTree
 
-from impcheck.artwork.boardfile import DrillWish, Plan
+from impcheck.artwork.boardfile import DrillWish
 from impcheck.artwork.excellon import read_excellon
 from impcheck.artwork.gerber import read_gerber
 from impcheck.artwork.gerber_drill import drills_from_gerber
 from impcheck.artwork.identify import Role, plating_in, span_in
-from impcheck.artwork.identify_files import Heads
 from impcheck.artwork.image import Image, Kind
 from impcheck.artwork.limits import Limits
 from impcheck.artwork.package import Package
@@ -26,40 +25,35 @@ _AT_PAD = 0.05  # mm between the centres of a hole and of its pad, at most
 
 @dataclass(frozen=True)
 class DrillSources:
-    """What drill files are read against."""
+    """The drill files, and what they are read against."""
 
-    plan: Plan
-    stackup: Stackup
     package: Package
-    heads: Heads
+    kinds: Mapping[str, str]  # what each file looks like
+    stackup: Stackup
     outline: Image | None
     coppers: tuple[Image, ...]
     netlist: NetlistPoints | None
     limits: Limits
+    files: Mapping[str, tuple[Role, DrillWish | None]]
+    remarks: list[Remark]  # guesses and disagreements go here
 
 
-def read_drills(
-    files: Mapping[str, tuple[Role, DrillWish | None]],
-    sources: DrillSources,
-    problems: Problems,
-    remarks: list[Remark],
-    progress: Callable[[str], None],
-) -> tuple[Drill, ...]:
-    """All drill files of a board. Mistakes are added to `problems`, guesses and disagreements to `remarks`."""
+def read_drills(sources: DrillSources, problems: Problems, progress: Callable[[str], None]) -> tuple[Drill, ...]:
+    """All drill files of a board. Mistakes are added to `problems`."""
     extent = extent_of(sources.outline, sources.coppers)
     drills = []
-    for name, (role, wish) in sorted(files.items()):
+    for name, (role, wish) in sorted(sources.files.items()):
         progress(f"reading {name}")
         try:
             data = sources.package.read(name)
-            if sources.heads.kinds.get(name) == "gerber":
+            if sources.kinds.get(name) == "gerber":
                 holes = drills_from_gerber(read_gerber(data, name, sources.limits))
             else:
                 holes = read_excellon(data, name, sources.limits, extent)
         except InputError as error:
             problems.take(error)
             continue
-        drills.append(_settled(holes, role, wish, sources, len(files), remarks))
+        drills.append(_settled(holes, role, wish, sources))
     return tuple(drills)
 
 
@@ -75,18 +69,22 @@ def extent_of(outline: Image | None, coppers: tuple[Image, ...]) -> tuple[float,
     return None
 
 
-def _settled(holes: DrillFile, role: Role, wish: DrillWish | None, sources: DrillSources, files: int, remarks: list[Remark]) -> Drill:
+def _settled(holes: DrillFile, role: Role, wish: DrillWish | None, sources: DrillSources) -> Drill:
     """A drill file with its layers and plating: the board file says, else its attribute or the job file, else its name, else a guess."""
+    remarks = sources.remarks
     names = [item.name for item in sources.stackup.coppers]
     last = len(names) - 1
     said = (role.layer - 1, role.last - 1) if role.layer is not None and role.last is not None and role.last <= last + 1 else None
-    back = _backdrill(wish, role, said, names, remarks, holes.file)
+    back = _backdrill(wish, role, said, names)
+    if back is not None and (wish is None or wish.backdrill is None):
+        text = f"not plated and not through: taken for a back-drill from {names[back[0]]} that keeps {names[back[1]]}"
+        remarks.append(Remark(RemarkKind.GUESS, text, holes.file))
     if back is not None:
         side, keep = back
         first, lowest = (keep + 1, last) if side == last else (0, keep - 1)
         plain = replace(holes, plated=np.zeros(len(holes.plated), dtype=np.int8))
         return Drill(plain, first, lowest, backdrill_from=side, backdrill_keep=keep)
-    holes = _plated(holes, role, wish, sources, files, remarks)
+    holes = _plated(holes, role, wish, sources)
     if wish is not None and wish.layers is not None and all(layer in names for layer in wish.layers):
         ends = sorted(names.index(layer) for layer in wish.layers)
         span = (ends[0], ends[1])
@@ -104,32 +102,24 @@ def _settled(holes: DrillFile, role: Role, wish: DrillWish | None, sources: Dril
     return Drill(holes, 0, last)
 
 
-def _backdrill(
-    wish: DrillWish | None, role: Role, said: tuple[int, int] | None, names: list[str], remarks: list[Remark], file: str
-) -> tuple[int, int] | None:
-    """Side and kept layer of a back-drill, as indices; None where the file is none."""
+def _backdrill(wish: DrillWish | None, role: Role, said: tuple[int, int] | None, names: list[str]) -> tuple[int, int] | None:
+    """Side and kept layer of a back-drill, as indices; None where the file is none. Holes that are not plated and reach from one side to an
+    inner layer are taken for one: they take the barrel away all the same."""
     last = len(names) - 1
     if wish is not None and wish.backdrill is not None:
         begin, keep = wish.backdrill
-        if begin in (names[0], names[-1]) and keep in names and keep != begin:
-            return names.index(begin), names.index(keep)
-        return None  # told already
-    plain = wish is None or (wish.layers is None and wish.plated is None)
-    if plain and role.plated is False and said is not None and said != (0, last):
-        first, lowest = said
-        if lowest == last and first > 0:
-            found = (last, first - 1)
-        elif first == 0 and lowest < last:
-            found = (0, lowest + 1)
-        else:
-            return None
-        text = f"not plated and not through: taken for a back-drill from {names[found[0]]} that keeps {names[found[1]]}"
-        remarks.append(Remark(RemarkKind.GUESS, text, file))
-        return found
-    return None
+        good = begin in (names[0], names[-1]) and keep in names and keep != begin
+        return (names.index(begin), names.index(keep)) if good else None  # what is wrong was told already
+    if role.plated is not False or said is None or (wish is not None and (wish.plated is not None or wish.layers is not None)):
+        return None
+    first, lowest = said
+    if lowest == last and first > 0:
+        return last, first - 1
+    return (0, lowest + 1) if first == 0 and lowest < last else None
 
 
-def _plated(holes: DrillFile, role: Role, wish: DrillWish | None, sources: DrillSources, files: int, remarks: list[Remark]) -> DrillFile:
+def _plated(holes: DrillFile, role: Role, wish: DrillWish | None, sources: DrillSources) -> DrillFile:
+    remarks = sources.remarks
     plated = holes.plated.astype(np.int8, copy=True)
     if wish is not None and wish.plated is not None:
         value = np.int8(wish.plated)
@@ -147,18 +137,18 @@ def _plated(holes: DrillFile, role: Role, wish: DrillWish | None, sources: Drill
         known = plating_in(holes.file)
         why = "by its name"
         if known is None:
-            known, why = _guess(holes, sources, files)
+            known, why = _guess(holes, sources)
         text = f"{why} its holes are taken for {'plated' if known else 'not plated'}"
         remarks.append(Remark(RemarkKind.GUESS, text, holes.file))
     plated[open_] = np.int8(known)
     return replace(holes, plated=plated)
 
 
-def _guess(holes: DrillFile, sources: DrillSources, files: int) -> tuple[bool, str]:
+def _guess(holes: DrillFile, sources: DrillSources) -> tuple[bool, str]:
     """Whether holes of which nothing is said are plated, and why that is assumed."""
     if (holes.net >= 0).any():
         return True, "because they carry net names"
-    if files == 1:
+    if len(sources.files) == 1:
         return True, "as the only drill file"
     share = _share_at_pads(holes, sources)
     if share >= 0.5:

@@ -49,7 +49,9 @@ _EXCELLON = re.compile(
     re.MULTILINE,
 )
 _EXCELLON_BODY = re.compile(rb"^[ \t]*T\d{1,4}[ \t]*\r?\n[ \t]*(?:G0?5[ \t]*\r?\n[ \t]*)?[XY][-+]?[\d.]", re.MULTILINE)
-_IPC356 = re.compile(rb"^(?:P  (?:JOB|UNITS|VER|TITLE|CODE|NUM|REV|IMAGE|NNAME)\b?|[03][1-4]7.{17,}[X+\- \d])", re.MULTILINE)
+_IPC356 = re.compile(
+    rb"^(?:P  (?:JOB|UNITS|VER|TITLE|CODE|NUM|REV|IMAGE|NNAME)|3[0-8][0-9].{20,60}X[+\- ]?\d)", re.MULTILINE | re.IGNORECASE
+)
 _DRILL_SUFFIXES = (".drl", ".xln", ".exc", ".tap", ".nc", ".cnc", ".ncd", ".drill")
 _BINARY = re.compile(rb"\A(?:%PDF|PK\x03\x04|\x89PNG|\xff\xd8\xff|GIF8|BM|\x1f\x8b|7z\xbc\xaf|Rar!)|\x00")
 
@@ -109,10 +111,10 @@ def role_of_function(function: Sequence[str], source: Source) -> Role:
 
 
 def role_of_name(name: str, kind: str) -> Role:
-    """The role a file's name suggests, by the habits of layout tools. `kind` is what its content looks like: a drill file is one by content."""
+    """The role a file's name suggests, by the habits of layout tools. `kind` is what its content looks like: by it a drill file is one."""
     part, side, order, plated = role_by_name(name)
     if kind == "excellon" or (kind == "" and name.lower().endswith(_DRILL_SUFFIXES)):  # empty ones are told of later
-        return Role("drill", Source.NAME, plated=plating_in(name))
+        return Role("drill", Source.NAME)
     if kind in ("netlist", "job", "binary") or (part == "drill" and kind == "gerber"):
         return Role("other", Source.NAME)
     return Role(part, Source.NAME, side=side, order=order, plated=plated)

@@ -1,4 +1,4 @@
-"""Which file plays which part on the board. In: a plan, the files' heads, a job file; out: Parts (file names), with what was guessed or disagreed."""
+"""Which file plays which part on the board. In: a plan, the files' first bytes, a job file; out: Parts, by file name, with remarks."""
 
 from __future__ import annotations
 
@@ -30,8 +30,17 @@ class Parts:
 class Heads:
     """What the first bytes of every file say."""
 
+    kinds: Mapping[str, str]  # content_kind
+    functions: Mapping[str, tuple[str, ...]]  # .FileFunction
+
+
+@dataclass(frozen=True)
+class Known:
+    """What every file looks like and is said to be."""
+
     kinds: Mapping[str, str]
-    functions: Mapping[str, tuple[str, ...]]
+    roles: Mapping[str, Role]
+    remarks: tuple[Remark, ...] = ()
 
 
 def sniff(package: Package, problems: Problems) -> Heads:
@@ -49,10 +58,10 @@ def sniff(package: Package, problems: Problems) -> Heads:
     return Heads(kinds, functions)
 
 
-def roles_of(heads: Heads, job_functions: Mapping[str, Sequence[str]]) -> tuple[dict[str, Role], list[Remark]]:
+def know(heads: Heads, job_functions: Mapping[str, Sequence[str]]) -> Known:
     """The role of each file by its attribute, else the job file, else its name; and where attribute and job file disagree."""
     roles: dict[str, Role] = {}
-    remarks = []
+    remarks: list[Remark] = []
     for name, kind in heads.kinds.items():
         said = role_of_function(heads.functions[name], Source.ATTRIBUTE)
         listed = role_of_function(job_functions.get(name, ()), Source.JOB_FILE)
@@ -67,7 +76,7 @@ def roles_of(heads: Heads, job_functions: Mapping[str, Sequence[str]]) -> tuple[
             text = f"the job file calls this {called(listed)}, its file attribute {called(said)}; the attribute was followed"
             remarks.append(Remark(RemarkKind.DISAGREEMENT, text, name))
         roles[name] = said if said.part else listed if listed.part else role_of_name(name, kind)
-    return roles, remarks
+    return Known(heads.kinds, roles, tuple(remarks))
 
 
 def called(role: Role) -> str:
@@ -85,9 +94,9 @@ def called(role: Role) -> str:
     return {"outline": "the board's outline", "drill": "a drill file"}.get(role.part, "no part of the copper")
 
 
-def identify(plan: Plan, stackup: Stackup, package: Package, heads: Heads, roles: Mapping[str, Role], problems: Problems) -> Parts:
+def identify(plan: Plan, stackup: Stackup, package: Package, known: Known, problems: Problems) -> Parts:
     """Gives each part of the board its file. What cannot be settled is added to `problems`."""
-    found = _Identifier(plan, stackup, package, heads, roles, problems)
+    found = _Identifier(plan, stackup, package, known, problems)
     found.claims()
     found.copper()
     found.masks()
@@ -98,9 +107,9 @@ def identify(plan: Plan, stackup: Stackup, package: Package, heads: Heads, roles
 
 
 class _Identifier:
-    def __init__(self, plan: Plan, stackup: Stackup, package: Package, heads: Heads, roles: Mapping[str, Role], problems: Problems) -> None:
-        self.plan, self.stackup, self.package, self.heads, self.problems = plan, stackup, package, heads, problems
-        self.roles = dict(roles)
+    def __init__(self, plan: Plan, stackup: Stackup, package: Package, known: Known, problems: Problems) -> None:
+        self.plan, self.stackup, self.package, self.problems = plan, stackup, package, problems
+        self.kinds, self.roles = known.kinds, known.roles
         self.count = len(stackup.coppers)
         self.parts = Parts([None] * self.count)
         self.claimed: dict[str, str] = {}  # file -> what the board file says it is
@@ -121,7 +130,7 @@ class _Identifier:
             self.problems.add(self.plan.board.file, line, said, "give each part of the board its own file")
             return None
         self.claimed[name] = what
-        said_role = self.roles[name] if name in self.roles else UNKNOWN
+        said_role = self.roles.get(name, UNKNOWN)
         same = said_role.part == role.part and (role.part != "copper" or said_role.layer == role.layer)
         if said_role.source in (Source.ATTRIBUTE, Source.JOB_FILE) and not same:
             text = f"the board file calls this {what}, {said_role.source} {called(said_role)}; the board file was followed"
@@ -164,7 +173,7 @@ class _Identifier:
             return
         for index, item in enumerate(self.stackup.coppers):
             if self.parts.copper[index] is None and not named[index]:
-                unknown = [name for name, role in self.roles.items() if not role.part and self.heads.kinds.get(name) == "gerber"]
+                unknown = [name for name, role in self.roles.items() if not role.part and self.kinds.get(name) == "gerber"]
                 remedy = f"write `file:` in its line; not known is what {_listed(unknown)} {'is' if len(unknown) == 1 else 'are'}"
                 if not unknown:
                     remedy = f"put its Gerber file into '{self.package.shown}', or write `file:` in its line"
@@ -249,11 +258,9 @@ class _Identifier:
                     self.problems.add(name, 0, said, "correct the stackup, or name the layers under `drills:`")
                 self.parts.drills[name] = (role, None)
         listed = {name for name, (_, wish) in self.parts.drills.items() if wish is not None}
-        same = {
-            (role.layer, role.last, role.plated) for name, (role, _) in self.parts.drills.items() if self.heads.kinds[name] == "excellon"
-        }
+        same = {(role.layer, role.last, role.plated) for name, (role, _) in self.parts.drills.items() if self.kinds[name] == "excellon"}
         for name, (role, _) in list(self.parts.drills.items()):
-            if name not in listed and self.heads.kinds[name] == "gerber" and (role.layer, role.last, role.plated) in same:
+            if name not in listed and self.kinds[name] == "gerber" and (role.layer, role.last, role.plated) in same:
                 del self.parts.drills[name]
                 self.remark(RemarkKind.ODD, "the same holes as an Excellon file by its file attribute; left out", name)
 
@@ -265,7 +272,7 @@ class _Identifier:
                 continue
             if role.part == "copper" and role.source is Source.NAME and not self.quarrel:
                 self.remark(RemarkKind.ODD, "looks like copper by its name and has no place in the stackup; left out", name)
-            elif not role.part and self.heads.kinds.get(name) == "gerber":
+            elif not role.part and self.kinds.get(name) == "gerber":
                 self.remark(RemarkKind.ODD, "neither an attribute nor its name says what this Gerber file is; left out", name)
 
 

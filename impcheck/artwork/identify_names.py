@@ -15,7 +15,8 @@ _SUFFIXES: dict[str, tuple[str, str]] = {
     "top": ("copper", "top"), "bot": ("copper", "bottom"), "sld": ("copper", "bottom"),
     "gts": ("mask", "top"), "gbs": ("mask", "bottom"), "stc": ("mask", "top"), "sts": ("mask", "bottom"),
     "smt": ("mask", "top"), "smb": ("mask", "bottom"), "tsm": ("mask", "top"), "bsm": ("mask", "bottom"),
-    "gko": ("outline", ""), "gm1": ("outline", ""), "gml": ("outline", ""), "dim": ("outline", ""), "oln": ("outline", ""), "bor": ("outline", ""),
+    "gko": ("outline", ""), "gm1": ("outline", ""), "gml": ("outline", ""), "dim": ("outline", ""),
+    "oln": ("outline", ""), "bor": ("outline", ""),
     "gto": ("other", ""), "gbo": ("other", ""), "gtp": ("other", ""), "gbp": ("other", ""), "plc": ("other", ""), "pls": ("other", ""),
     "crc": ("other", ""), "crs": ("other", ""), "sst": ("other", ""), "ssb": ("other", ""), "spt": ("other", ""), "spb": ("other", ""),
     "tsk": ("other", ""), "bsk": ("other", ""), "tsp": ("other", ""), "bsp": ("other", ""), "fab": ("other", ""), "gd1": ("other", ""),
@@ -24,7 +25,8 @@ _SUFFIXES: dict[str, tuple[str, str]] = {
 _GERBER_SUFFIXES = ("gbr", "ger", "grb", "gbx", "pho", "art", "gdo", "gb", "274", "rs274x", "x274", "fph", "gerber", "")
 _OTHER_WORDS = (
     r"silk|legend|overlay|screen|paste|cream|stencil|assembl|assy|fab(?:rication)?$|drill[_ -]?(?:map|drawing|chart|dwg|guide|table)"
-    r"|courtyard|adhesive|glue|keep|dwgs?\b|drawing|comments?\b|eco\d|readme|pick|place|bom|carbon|peel|v[-_ ]?(?:cut|score)|margin|user\d?\b"
+    r"|courtyard|adhesive|glue|keep|dwgs?\b|drawing|comments?\b|eco\d|readme|pick|place|bom|carbon|peel|v[-_ ]?(?:cut|score)"
+    r"|margin|user\d?\b"
 )
 _TOP, _BOTTOM = (
     r"top|front|component ?(?:side|mask)|\bf\b|\bcmp\b|\bcs\b|primary",

@@ -1,113 +1,116 @@
-"""Gerber job files (.gbrjob). In: bytes of JSON; out: file functions and the stackup they state, in mm."""
+"""Gerber job files (.gbrjob, JSON). In: bytes; out: the board's size, file functions and stackup they state, in mm.
+
+Written from the Gerber Job Format Specification (Ucamco, revisions of 2018 and 2020), cited from memory: lengths are mm.
+"""
 
 from __future__ import annotations
 
-import json
 from collections.abc import Mapping
-from dataclasses import dataclass, field
-from typing import Any
+from dataclasses import dataclass, field, replace
 
+from impcheck.artwork.jobfile_json import JobObject, load
+from impcheck.artwork.jobfile_stackup import JobItem, items_of, stackup_of
 from impcheck.artwork.limits import Limits
-from impcheck.artwork.stackup import CopperItem, Dielectric, Mask, Stackup
-from impcheck.errors import InputError, Problem
+from impcheck.artwork.stackup import Stackup
+from impcheck.errors import InputError, Problem, Remark, RemarkKind
+
+_DEFAULTS = Limits()
+_SECTIONS = ("Header", "GeneralSpecs", "FilesAttributes", "MaterialStackup", "DesignRules")
 
 
 @dataclass(frozen=True)
 class Job:
-    """What a job file says."""
+    """What a job file says. Nothing in it is assumed: what it leaves out is None, or stands in `missing`."""
 
     file: str
     name: str = ""
     size: tuple[float, float] | None = None  # mm
-    layer_count: int | None = None
+    layer_count: int | None = None  # copper layers
     thickness: float | None = None  # mm
     functions: Mapping[str, tuple[str, ...]] = field(default_factory=dict)  # file path -> ("Copper", "L1", "Top")
     polarities: Mapping[str, str] = field(default_factory=dict)  # file path -> "Positive" or "Negative"
-    stackup: Stackup | None = None  # None where the file states none, or not all of it
-    missing: tuple[str, ...] = ()  # what a stackup would still need, one sentence each
+    items: tuple[JobItem, ...] = ()  # copper, dielectrics and solder mask top to bottom, as far as stated
+    stackup: Stackup | None = None  # None where the file states none, or not all that impedance needs
+    missing: tuple[str, ...] = ()  # what keeps `stackup` from being complete, one sentence each
+    remarks: tuple[Remark, ...] = ()
 
 
-def read_job(data: bytes, file: str, limits: Limits | None = None) -> Job:
-    """Reads a job file. Raises InputError where it is no JSON object, with the line."""
-    limits = limits or Limits()
+def read_job(data: bytes, file: str, limits: Limits = _DEFAULTS) -> Job:
+    """Reads a job file.
+
+    Raises InputError with the line where the file is no JSON or no job file. A value that is left out or impossible is not replaced: the
+    sentence about it is in `missing`, and there is then no `stackup`.
+    """
     if len(data) > limits.file_bytes:
-        raise InputError(Problem(file, 0, f"the file is larger than {limits.file_bytes} bytes (limit file_bytes)", "leave it out of the package"))
-    try:
-        document = json.loads(data.decode("utf-8-sig", errors="replace"))
-    except json.JSONDecodeError as error:
-        raise InputError(Problem(file, error.lineno, f"this is no JSON: {error.msg}", "export the job file again")) from None
-    except RecursionError:
-        raise InputError(Problem(file, 0, "the JSON is nested too deep", "export the job file again")) from None
-    if not isinstance(document, dict):
-        raise InputError(Problem(file, 1, "a job file is a JSON object", "export the job file again"))
-    general = _mapping(document.get("GeneralSpecs"))
-    size = _mapping(general.get("Size"))
-    functions, polarities = {}, {}
-    for entry in _list(document.get("FilesAttributes")):
-        path, function = entry.get("Path"), entry.get("FileFunction")
-        if isinstance(path, str) and isinstance(function, str):
-            functions[path] = tuple(part.strip() for part in function.split(","))
-            if isinstance(entry.get("FilePolarity"), str):
-                polarities[path] = entry["FilePolarity"]
-    stackup, missing = _stackup(_list(document.get("MaterialStackup")))
-    name = _mapping(general.get("ProjectId")).get("Name")
-    width, height = _number(size.get("X")), _number(size.get("Y"))
-    count = general.get("LayerNumber")
-    return Job(
+        raise InputError(Problem(file, 0, f"the file has {len(data):,} bytes", f"limit file_bytes = {limits.file_bytes:,}"))
+    document = load(data, file)
+    if not any(document.get_any(section) is not None for section in _SECTIONS):
+        said = "this JSON is no Gerber job file: it has none of " + ", ".join(_SECTIONS)
+        raise InputError(Problem(file, document.line, said, "export the job file (.gbrjob) again, or leave it out"))
+    remarks: list[Remark] = []
+    general = document.child("GeneralSpecs", "Overall")
+    size = general.child("Size")
+    width, height = size.number("X"), size.number("Y")
+    count = general.number("LayerNumber")
+    thickness = general.number("BoardThickness")
+    functions, polarities = _files(document.children("FilesAttributes"), file, remarks)
+    items = items_of(document.children("MaterialStackup"))
+    stackup, missing = stackup_of(items)
+    job = Job(
         file=file,
-        name=name if isinstance(name, str) else "",
-        size=None if width is None or height is None else (width, height),
-        layer_count=count if isinstance(count, int) and not isinstance(count, bool) else None,
-        thickness=_number(general.get("BoardThickness")),
+        name=general.child("ProjectId").text("Name"),
+        size=(width, height) if width is not None and height is not None and width > 0 and height > 0 else None,
+        layer_count=int(count) if count is not None and count >= 1 and count == int(count) else None,
+        thickness=thickness if thickness is not None and thickness > 0 else None,
         functions=functions,
         polarities=polarities,
+        items=items,
         stackup=stackup,
         missing=missing,
     )
+    remarks += _doubts(job, document.child("GeneralSpecs", "Overall").line)
+    return replace(job, remarks=tuple(remarks))
 
 
-def _stackup(entries: list[dict[str, Any]]) -> tuple[Stackup | None, tuple[str, ...]]:
-    items: list[Mask | CopperItem | Dielectric] = []
-    missing: list[str] = []
-    for number, entry in enumerate(entries, 1):
-        kind = str(entry.get("Type", "")).lower()
-        name = str(entry.get("Name", "")) or f"item {number}"
-        thickness, er, loss = _number(entry.get("Thickness")), _number(entry.get("DielectricConstant")), _number(entry.get("LossTangent"))
-        if kind == "copper":
-            layer = f"L{sum(isinstance(item, CopperItem) for item in items) + 1}"
-            if thickness is None or thickness <= 0:
-                missing.append(f"copper {name} has no thickness")
-            items.append(CopperItem(layer, thickness or 0.0))
-        elif kind == "dielectric":
-            if thickness is None or thickness <= 0:
-                missing.append(f"dielectric {name} has no thickness")
-            if er is None or er < 1:
-                missing.append(f"dielectric {name} has no dielectric constant")
-            words = f"{name} {entry.get('Material', '')} {entry.get('Notes', '')}".lower()
-            core = True if "core" in words else False if "prepreg" in words else None
-            items.append(Dielectric(thickness or 0.0, er or 1.0, loss or 0.0, name, core))
-        elif kind == "soldermask":
-            outer = not any(isinstance(item, CopperItem) for item in items) or number == len(entries) or not _copper_follows(entries[number:])
-            if outer and thickness is not None and thickness > 0 and er is not None and er >= 1:
-                items.append(Mask(thickness, er, loss or 0.0))
-            else:
-                missing.append(f"solder mask {name} has no thickness or dielectric constant, so the board is taken without it")
-    coppers = sum(isinstance(item, CopperItem) for item in items)
-    complete = coppers >= 2 and not any("mask" not in text for text in missing)
-    return (Stackup(tuple(items)) if complete else None), tuple(missing)
+def _files(entries: list[JobObject], file: str, remarks: list[Remark]) -> tuple[dict[str, tuple[str, ...]], dict[str, str]]:
+    """Functions and polarities by path. An entry that names no file or no function is said and left out."""
+    functions: dict[str, tuple[str, ...]] = {}
+    polarities: dict[str, str] = {}
+    for entry in entries:
+        path, function = entry.text("Path").replace("\\", "/"), entry.text("FileFunction")
+        if not path or not function:
+            lacks = "Path" if not path else "FileFunction"
+            remarks.append(Remark(RemarkKind.ODD, f"an entry of FilesAttributes has no {lacks}; it was left out", file, entry.line))
+            continue
+        values = tuple(part.strip() for part in function.split(","))
+        if functions.get(path, values) != values:
+            said = f"'{path}' is listed twice with different functions; the later one counts"
+            remarks.append(Remark(RemarkKind.ODD, said, file, entry.line))
+        functions[path] = values
+        polarity = entry.text("FilePolarity").capitalize()
+        if polarity in ("Positive", "Negative"):
+            polarities[path] = polarity
+        elif polarity:
+            said = f"FilePolarity '{polarity}' is neither Positive nor Negative; it was left out"
+            remarks.append(Remark(RemarkKind.ODD, said, file, entry.line))
+    return functions, polarities
 
 
-def _copper_follows(entries: list[dict[str, Any]]) -> bool:
-    return any(str(entry.get("Type", "")).lower() == "copper" for entry in entries)
-
-
-def _mapping(value: object) -> dict[str, Any]:
-    return value if isinstance(value, dict) else {}
-
-
-def _list(value: object) -> list[dict[str, Any]]:
-    return [entry for entry in value if isinstance(entry, dict)] if isinstance(value, list) else []
-
-
-def _number(value: object) -> float | None:
-    return float(value) if isinstance(value, int | float) and not isinstance(value, bool) and 0 <= value < 1e5 else None
+def _doubts(job: Job, line: int) -> list[Remark]:
+    """What the job file says against itself, and losses it leaves out."""
+    found = []
+    coppers = sum(item.kind == "copper" for item in job.items)
+    if coppers and job.layer_count is not None and coppers != job.layer_count:
+        said = f"the job file says {job.layer_count} copper layers and lists {coppers} in its stackup; the list was taken"
+        found.append(Remark(RemarkKind.DISAGREEMENT, said, job.file, line))
+    if job.stackup is not None and job.thickness is not None:
+        everything = sum(item.thickness for item in job.stackup.items)
+        laminate = sum(item.thickness or 0.0 for item in job.items if item.kind == "dielectric")
+        if not 0.9 * laminate <= job.thickness <= 1.1 * everything:  # 10 % is the usual tolerance of a board's thickness (common practice)
+            said = f"the job file's board is {job.thickness:g} mm thick, its stackup adds up to {everything:.4g} mm; the stackup was taken"
+            found.append(Remark(RemarkKind.DISAGREEMENT, said, job.file, line))
+    lossless = [item for item in job.items if item.kind == "dielectric" and item.loss_tangent is None]
+    if job.stackup is not None and lossless:
+        said = "the job file gives no loss tangent for " + ", ".join(item.name or f"line {item.line}" for item in lossless[:4])
+        found.append(Remark(RemarkKind.LIMIT, f"{said}: no loss is calculated there", job.file, lossless[0].line))
+    return found

@@ -14,8 +14,8 @@ from numpy.typing import NDArray
 from impcheck.artwork.image import Floats, Ints
 from impcheck.copper.copper import LayerCopper
 
-MAX_WINDOW = 2.0
-CHUNK = 20
+MAX_WINDOW = 1.0  # mm, longest window
+CHUNK = 12  # edges that share one box of the spatial index
 
 
 @dataclass(frozen=True)

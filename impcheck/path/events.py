@@ -10,7 +10,8 @@ from impcheck.path.edges import LocalEdges
 from impcheck.path.frame import Frame, corners
 
 SURE_MERGE = 0.004  # mm: two events that must be placed exactly become one when closer
-LOOSE_MERGE = 0.02  # mm: other events are dropped this close to any
+LOOSE_MERGE = 0.02  # mm: changes of the own copper's outline are dropped this close to any
+WEAK_MERGE = 0.05  # mm: and so are those of copper beside the trace
 LONGEST = 1.0  # mm between events
 TAPER = 0.03  # share of the width by which a tapered trace may change in one station
 GAP_SHARE = 0.15  # share of the gap by which it may change in one station
@@ -49,7 +50,9 @@ def _slanted(local: LocalEdges, keep: Bools, step: Floats, places: Places) -> No
     places.append((local.window[index], local.s0[index] + rank / parts[index] * (local.s1[index] - local.s0[index])))
 
 
-def own_layer(frame: Frame, local: LocalEdges, own: Bools, stroke: Bools, hidden: Bools, *, sure: Places, loose: Places) -> None:
+def own_layer(
+    frame: Frame, local: LocalEdges, own: Bools, stroke: Bools, hidden: Bools, *, sure: Places, loose: Places, weak: Places
+) -> None:
     """Events on the run's own layer. `own` (edges,): of the same net; `stroke` (edges,): of a round stroke, whose ends lie hidden in the
     next one. `hidden` (edges,): the edge ends inside other copper of the net."""
     width = frame.width[local.window]
@@ -72,34 +75,34 @@ def own_layer(frame: Frame, local: LocalEdges, own: Bools, stroke: Bools, hidden
     beside = np.minimum(frame.windows.reach[local.window], width / 2 + 1.0)
     corner = foreign & (np.abs(local.t1) < beside) & (back_s | back_t | (np.abs(local.turn) > CORNER))
     hit = np.flatnonzero(corner)
-    loose.append((local.window[hit], local.s1[hit]))
+    weak.append((local.window[hit], local.s1[hit]))
     for distance in BESIDE:
         for side in (-1.0, 1.0):
-            _crossings(local, foreign, side * (frame.width / 2 + distance), loose)
+            _crossings(local, foreign, side * (frame.width / 2 + distance), weak)
     gap = np.maximum(near - width / 2, 0.05)
-    _slanted(local, foreign & (near < width / 2 + 0.8), GAP_SHARE * gap, loose)
+    _slanted(local, foreign & (near < width / 2 + 0.8), GAP_SHARE * gap, weak)
 
 
-def plane_layer(frame: Frame, local: LocalEdges, wanted: Bools, height: Floats, *, sure: Places, loose: Places) -> None:
+def plane_layer(frame: Frame, local: LocalEdges, wanted: Bools, height: Floats, *, sure: Places, weak: Places) -> None:
     """Events on a layer that may carry the return: `wanted` (edges,) are those of return copper, `height` (windows,)."""
     for share in (-0.4999, 0.0, 0.4999):
         _crossings(local, wanted, share * frame.width, sure)
     for share in (-0.25, 0.25):
-        _crossings(local, wanted, share * frame.width, loose)
+        _crossings(local, wanted, share * frame.width, weak)
     for heights in (1.0, 2.0):
         for side in (-1.0, 1.0):
-            _crossings(local, wanted, side * (frame.width / 2 + heights * height), loose)
+            _crossings(local, wanted, side * (frame.width / 2 + heights * height), weak)
     back_s, back_t = _extremes(local)
     width = frame.width[local.window]
     hit = np.flatnonzero(wanted & back_s & (np.abs(local.t1) < width / 2))
     sure.append((local.window[hit], local.s1[hit]))
     near = np.abs(local.t1) < width / 2 + 2 * height[local.window]
     hit = np.flatnonzero(wanted & near & (back_s | back_t | (np.abs(local.turn) > CORNER)))
-    loose.append((local.window[hit], local.s1[hit]))
+    weak.append((local.window[hit], local.s1[hit]))
 
 
 def boundaries(
-    frame: Frame, sure: Places, loose: Places, exact: tuple[NDArray[np.int64], Floats]
+    frame: Frame, sure: Places, loose: Places, weak: Places, exact: tuple[NDArray[np.int64], Floats]
 ) -> tuple[NDArray[np.int64], Floats, Floats]:
     """Leg, begin and end of every station. `exact` are (leg, s) of zone ends; ends of legs and vertices are added here."""
     stride = float(frame.length.max(initial=1.0)) + 2.0
@@ -125,9 +128,11 @@ def boundaries(
     firm = np.sort(np.concatenate([fixed, firm]))
     curved = _away(_thin(frame.leg[curve] * stride + frame.base[curve], CURVE_STEP), firm, CURVE_STEP / 2)
     firm = np.sort(np.concatenate([firm, curved]))
-    loose_leg, loose_s = along(loose)
-    weak = _away(_thin(np.sort(loose_leg * stride + loose_s), LOOSE_MERGE), firm, LOOSE_MERGE)
-    every = np.sort(np.concatenate([firm, weak]))
+    every = firm
+    for places, distance in ((loose, LOOSE_MERGE), (weak, WEAK_MERGE)):
+        extra_leg, extra_s = along(places)
+        extra = _away(_thin(np.sort(extra_leg * stride + extra_s), distance), every, distance)
+        every = np.sort(np.concatenate([every, extra]))
     leg = np.floor(every / stride + 1e-12).astype(np.int64)
     inner = leg[1:] == leg[:-1]
     begin, end, owner = every[:-1][inner], every[1:][inner], leg[:-1][inner]

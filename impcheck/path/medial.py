@@ -1,6 +1,7 @@
 """Centreline of a long narrow polygon. In: a polygon, mm; out: straight pieces of its medial axis with widths, mm.
 
-The medial axis comes from the Voronoi diagram of points on the boundary (Brandt and Algazi 1992, CVGIP: Image Understanding 55). Where
+The medial axis comes from the Voronoi diagram of points on the boundary (Brandt and Algazi 1992, CVGIP: Image Understanding 55,
+cited from memory). Where
 two straight edges face each other it is replaced by their bisector, and at bends and T-junctions those bisectors are led on until they
 meet: that is the centreline a person would have drawn.
 """
@@ -16,11 +17,10 @@ from numpy.typing import NDArray
 from scipy.spatial import QhullError, Voronoi, cKDTree
 
 from impcheck.artwork.image import Floats
-from impcheck.path.straighten import assemble, regular_chain
+from impcheck.path.straighten import SAME_POINT, assemble, regular_chain
 
 SAMPLES_PER_WIDTH = 4
 DETOUR = 2.0  # boundary length over chord from which two boundary points face each other across copper; a corner of 90 degrees has 1.41
-SAME_POINT = 1e-5  # mm
 MAX_SAMPLES = 200_000
 
 

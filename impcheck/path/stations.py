@@ -163,10 +163,11 @@ class Measure:
         frame = part.frame
         sure: events.Places = []
         loose: events.Places = []
+        weak: events.Places = []
         own = self.owner[edges.labels[local.piece]] == part.group[frame.leg[local.window]]
         stroke = _strokes(self.copper.layers[part.layer])
         hidden = self._hidden(part, edges, local, own & ~stroke[local.piece])
-        events.own_layer(frame, local, own, stroke[local.piece], hidden, sure=sure, loose=loose)
+        events.own_layer(frame, local, own, stroke[local.piece], hidden, sure=sure, loose=loose, weak=weak)
         for other in range(len(self.copper.layers)):
             between = part.between(other)
             windows = np.flatnonzero(between[frame.leg])
@@ -176,12 +177,12 @@ class Measure:
             found = there.local(frame.windows.take(windows))
             found = _renumber(found, windows)
             part.kept[other] = (windows, found)
-            events.plane_layer(frame, found, self.wanted[there.labels[found.piece]], part.height[frame.leg], sure=sure, loose=loose)
+            events.plane_layer(frame, found, self.wanted[there.labels[found.piece]], part.height[frame.leg], sure=sure, weak=weak)
         exact = (
             np.concatenate([bends[0], bends[0], joints[0], joints[0]]),
             np.concatenate([bends[1], bends[2], joints[1], joints[2]]),
         )
-        return events.boundaries(frame, sure, loose, exact)
+        return events.boundaries(frame, sure, loose, weak, exact)
 
     def _hidden(self, part: _Part, edges: LayerEdges, local: LocalEdges, asked: Bools) -> Bools:
         """(edges,) True for edges at `asked` near the centreline whose far end lies inside another piece of the same label."""
