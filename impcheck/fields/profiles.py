@@ -1,0 +1,163 @@
+"""Impedance along walked nets. In: walks, copper, a stackup; out: a profile a net, each distinct cross-section solved once."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from concurrent.futures import ProcessPoolExecutor
+from dataclasses import dataclass
+
+import numpy as np
+import shapely
+from numpy.typing import NDArray
+
+from impcheck.artwork.image import Bools, Floats
+from impcheck.artwork.stackup import Stackup
+from impcheck.copper.copper import Copper
+from impcheck.errors import Remark, RemarkKind
+from impcheck.fields.cross_section import Edges, Shape, section_of, shape_of
+from impcheck.fields.line import SPEED
+from impcheck.fields.profile import NetProfile, RunProfile
+from impcheck.fields.section import SectionError
+from impcheck.fields.solver import solve
+from impcheck.nets.nets import Nets
+from impcheck.path.walk import Intervals, Run, Walk, Zone
+
+GRAIN = 0.002  # mm: stations whose cuts agree to this are one before anything is computed
+Solved = tuple[float, float, float]  # impedance in ohm, effective permittivity, estimated relative error
+
+
+@dataclass
+class _Counts:
+    stations: int = 0
+    unsolved: int = 0
+    lonely: int = 0
+
+
+def profile_nets(
+    walks: Sequence[Walk], stackup: Stackup, nets: Nets, copper: Copper, *, jobs: int = 1
+) -> tuple[tuple[NetProfile, ...], tuple[Remark, ...]]:
+    """Fields of every station of every walk, and remarks on what could not be solved.
+
+    Copper beside a trace counts at 0 V, whether it is a return net or a quiet foreign net (its driver holds it); the own net's other legs stay out of
+    the section. `jobs` processes share the solving; the result does not depend on their number.
+    """
+    returns = np.zeros(nets.count, bool)
+    returns[sorted(nets.returns)] = True
+    shapes: dict[Shape, int] = {}
+    rows: list[list[NDArray[np.int64]]] = []
+    for walk in walks:
+        own = np.zeros(nets.count, bool)
+        own[list(walk.net.labels)] = True
+        rows.append([_shapes_of_run(run, stackup, copper, returns, own, shapes) for run in walk.runs])
+    solved = _solve_all(list(shapes), stackup, jobs)
+    table = np.array([*solved, (np.nan, np.nan, np.nan)])
+    profiles = []
+    lost = 0
+    for walk, runs in zip(walks, rows, strict=True):
+        found = []
+        for index in runs:
+            z0, eps, error = table[index].T
+            lost += int(np.isnan(z0).sum())
+            found.append(RunProfile(z0, eps, np.sqrt(eps) / SPEED, error))
+        profiles.append(NetProfile(walk, tuple(found)))
+    remarks = []
+    if lost:
+        total = sum(len(index) for runs in rows for index in runs)
+        text = f"{lost} of {total} stations have no cross-section that could be solved (nothing near to return on, or copper that touches): they carry no impedance"
+        remarks.append(Remark(RemarkKind.LIMIT, text))
+    return tuple(profiles), tuple(remarks)
+
+
+def _shapes_of_run(run: Run, stackup: Stackup, copper: Copper, returns: Bools, own: Bools, shapes: dict[Shape, int]) -> NDArray[np.int64]:
+    """(n,) index into `shapes` of each station, -1 where there is no section."""
+    stations = run.stations
+    fine = np.isin(stations.zone, (Zone.TRACE, Zone.BEND))
+    coated = _coated(run, stackup, copper)
+    cuts = {layer: _prepared(cut, stations.centre, returns, own, layer == run.layer) for layer, cut in stations.cuts.items()}
+    width = np.maximum(np.round(stations.width / GRAIN * 2).astype(np.int64), 1)
+    found = np.full(len(stations), -1, np.int64)
+    known: dict[tuple[object, ...], int] = {}
+    above = [layer for layer in range(run.layer - 1, -1, -1) if layer in cuts]
+    below = [layer for layer in range(run.layer + 1, len(stackup.coppers)) if layer in cuts]
+    for i in range(len(stations)):
+        key = (width[i], fine[i], coated[i], *(cut.key(i) for cut in cuts.values()))
+        index = known.get(key)
+        if index is None:
+            half = float(stations.width[i]) / 2
+            beside = tuple((a, b) for a, b in cuts[run.layer].edges(i) if a > half - 1e-3 or b < -half + 1e-3)
+            upper = [(layer, cuts[layer].edges(i)) for layer in above]
+            lower = [(layer, cuts[layer].edges(i)) for layer in below]
+            shape = shape_of(run.layer, float(stations.width[i]), beside, upper, lower, stackup, bool(coated[i]), bool(fine[i]))
+            nothing = shape.closed_above < 0 and shape.closed_below < 0 and not shape.planes and not shape.beside
+            index = -1 if nothing else shapes.setdefault(shape, len(shapes))
+            known[key] = index
+        found[i] = index
+    return found
+
+
+class _Cut:
+    """The copper of one layer's cuts that a section sees, relative to the middle of the trace."""
+
+    def __init__(self, first: NDArray[np.int64], low: Floats, high: Floats) -> None:
+        self.first, self.low, self.high = first, low, high
+        self._rounded = np.round(np.column_stack([low, high]) / GRAIN).astype(np.int32)
+
+    def key(self, i: int) -> bytes:
+        """What two stations must share to be one."""
+        return self._rounded[self.first[i] : self.first[i + 1]].tobytes()
+
+    def edges(self, i: int) -> Edges:
+        """Low and high edges at station i, sorted, overlaps merged."""
+        found: list[tuple[float, float]] = []
+        for low, high in sorted(zip(self.low[self.first[i] : self.first[i + 1]].tolist(), self.high[self.first[i] : self.first[i + 1]].tolist(), strict=True)):
+            if found and low <= found[-1][1] + 1e-6:
+                found[-1] = (found[-1][0], max(high, found[-1][1]))
+            else:
+                found.append((low, high))
+        return tuple(found)
+
+
+def _prepared(cut: Intervals, centre: Floats, returns: Bools, own: Bools, same_layer: bool) -> _Cut:
+    """Return copper on other layers; everything that is not the own net on the own layer."""
+    use = ~own[cut.label] if same_layer else returns[cut.label]
+    count = np.diff(cut.first)
+    station = np.repeat(np.arange(len(count)), count)
+    first = np.concatenate([[0], np.cumsum(np.bincount(station[use], minlength=len(count)))])
+    shift = centre[station[use]]
+    return _Cut(first, cut.low[use] - shift, cut.high[use] - shift)
+
+
+def _coated(run: Run, stackup: Stackup, copper: Copper) -> Bools:
+    """(n,) True where solder mask covers the trace."""
+    last = len(stackup.coppers) - 1
+    side = 0 if run.layer == 0 else 1 if run.layer == last else None
+    mask = None if side is None else (stackup.mask_top, stackup.mask_bottom)[side]
+    if side is None or mask is None:
+        return np.zeros(len(run.stations), bool)
+    openings = copper.mask_openings[side]
+    covered = np.ones(len(run.stations), bool)
+    if len(openings):
+        which, _ = shapely.STRtree(openings).query(shapely.points(run.stations.at), predicate="within")
+        covered[which] = False
+    return covered
+
+
+def _solve_all(shapes: list[Shape], stackup: Stackup, jobs: int) -> list[Solved]:
+    if jobs > 1 and len(shapes) > 8 * jobs:
+        size = max(1, len(shapes) // (8 * jobs))
+        chunks = [shapes[i : i + size] for i in range(0, len(shapes), size)]
+        with ProcessPoolExecutor(jobs) as pool:
+            return [found for part in pool.map(_solve_chunk, chunks, [stackup] * len(chunks)) for found in part]
+    return _solve_chunk(shapes, stackup)
+
+
+def _solve_chunk(shapes: list[Shape], stackup: Stackup) -> list[Solved]:
+    return [_solve(shape, stackup) for shape in shapes]
+
+
+def _solve(shape: Shape, stackup: Stackup) -> Solved:
+    try:
+        line = solve(section_of(shape, stackup))
+    except SectionError:
+        return (float("nan"),) * 3
+    return line.z0, line.eps_eff, line.error

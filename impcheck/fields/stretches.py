@@ -1,0 +1,85 @@
+"""Stretches of a profile. In: a profile; out: stations next to each other that share one cross-section, merged, in mm, ohm and s."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from impcheck.fields.profile import NetProfile, RunProfile
+from impcheck.path.walk import Run, Zone
+
+SAME = 0.002  # relative difference of impedance and width that is one stretch
+
+
+@dataclass(frozen=True)
+class Stretch:
+    """One stretch."""
+
+    layer: int
+    along: tuple[float, float]  # mm
+    start: tuple[float, float]
+    end: tuple[float, float]
+    width: float  # mm
+    impedance: float  # ohm, nan where unsolved
+    eps_eff: float
+    delay: float  # s over the whole stretch
+    above: int
+    below: int
+    coverage: float  # the least share of the width that a usual reference covers
+    zone: Zone
+
+
+def stretches(profile: NetProfile) -> list[Stretch]:
+    """All stretches of a net, run by run."""
+    return [stretch for run, fields in zip(profile.walk.runs, profile.runs, strict=True) for stretch in _of_run(run, fields)]
+
+
+def _of_run(run: Run, fields: RunProfile) -> list[Stretch]:
+    s = run.stations
+    if len(s) == 0:
+        return []
+    z = np.nan_to_num(fields.impedance, nan=-1.0)
+    cover = np.minimum(np.where(s.above >= 0, s.coverage_above, 1.0), np.where(s.below >= 0, s.coverage_below, 1.0))
+    cover = np.where((s.above < 0) & (s.below < 0), 0.0, cover)
+    change = (
+        (np.abs(np.diff(z)) > SAME * np.abs(z[1:]))
+        | (np.abs(np.diff(s.width)) > SAME * s.width[1:])
+        | (np.diff(s.above) != 0)
+        | (np.diff(s.below) != 0)
+        | (np.abs(np.diff(cover)) > 0.01)
+        | (np.diff(s.zone.astype(np.int8)) != 0)
+    )
+    first = np.concatenate([[0], np.flatnonzero(change) + 1])
+    last = np.concatenate([first[1:], [len(s)]])
+    found = []
+    for a, b in zip(first.tolist(), last.tolist(), strict=True):
+        length = s.end[a:b] - s.begin[a:b]
+        weight = np.maximum(length, 1e-9)
+        found.append(
+            Stretch(
+                layer=run.layer,
+                along=(float(s.begin[a]), float(s.end[b - 1])),
+                start=point_on(run, float(s.begin[a])),
+                end=point_on(run, float(s.end[b - 1])),
+                width=float(np.average(s.width[a:b], weights=weight)),
+                impedance=float(np.average(fields.impedance[a:b], weights=weight)),
+                eps_eff=float(np.average(fields.eps_eff[a:b], weights=weight)),
+                delay=float(np.sum(fields.delay[a:b] * length)),
+                above=int(s.above[a]),
+                below=int(s.below[a]),
+                coverage=float(cover[a:b].min()),
+                zone=Zone(int(s.zone[a])),
+            )
+        )
+    return found
+
+
+def point_on(run: Run, along: float) -> tuple[float, float]:
+    """The point of a run's centreline at a path coordinate."""
+    step = np.hypot(*np.diff(run.line, axis=0).T)
+    reached = np.concatenate([[0.0], np.cumsum(step)])
+    total = reached[-1]
+    span = run.along[1] - run.along[0]
+    at = 0.0 if span <= 0 else (along - run.along[0]) / span * total
+    return float(np.interp(at, reached, run.line[:, 0])), float(np.interp(at, reached, run.line[:, 1]))
