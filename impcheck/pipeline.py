@@ -87,7 +87,7 @@ def run(board: Path, *, jobs: int = 1, progress: Callable[[str], None] | None = 
     with step("walk", "walking the declared nets"):
         walks = walk_nets(artwork, copper, nets)
     with step("solve", "solving the cross-sections"):
-        profiles, remarks = profile_nets(walks, artwork.stackup, nets, jobs=jobs)
+        profiles, remarks = profile_nets(walks, artwork.stackup, nets, copper, jobs=jobs)
     with step("judge", "judging"):
         findings, judged = run_checks(artwork, copper, nets, profiles, deck)
         everything = (*artwork.remarks, *nets.remarks, *remarks, *judged)

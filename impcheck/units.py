@@ -85,9 +85,7 @@ def number(text: str, what: str = "number") -> float:
     return float(match[1])
 
 
-def _quantity(  # noqa: PLR0917
-    text: str, what: str, example: str, si: tuple[str, ...], other: Mapping[str, str], base: str, expected: str
-) -> float:
+def _quantity(text: str, what: str, example: str, si: tuple[str, ...], other: Mapping[str, str], base: str, expected: str) -> float:
     """The value of a number and its unit; `base` is the result's unit in SI units. Decimal arithmetic: 0.19mm is the float 0.19."""
     plain = text.strip().replace("μ", "µ")  # the Greek letter and the micro sign look alike
     match = _NUMBER.fullmatch(plain)

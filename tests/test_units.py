@@ -26,9 +26,12 @@ def test_lengths(text, mm):
 @pytest.mark.parametrize(
     ("read", "text", "value"),
     [
-        (units.time, "300ps", 300e-12), (units.time, "1.5 ns", 1.5e-9), (units.time, "2us", 2e-6), (units.time, "3ms", 3e-3), (units.time, "1s", 1.0),
-        (units.frequency, "2.5GHz", 2.5e9), (units.frequency, "10 MHz", 1e7), (units.frequency, "1kHz", 1e3), (units.frequency, "50Hz", 50.0),
-        (units.impedance, "50 ohm", 50.0), (units.impedance, "50ohm", 50.0), (units.impedance, "50Ω", 50.0), (units.impedance, "1 kohm", 1000.0),
+        (units.time, "300ps", 300e-12), (units.time, "1.5 ns", 1.5e-9), (units.time, "2us", 2e-6), (units.time, "3ms", 3e-3),
+        (units.time, "1s", 1.0),
+        (units.frequency, "2.5GHz", 2.5e9), (units.frequency, "10 MHz", 1e7), (units.frequency, "1kHz", 1e3),
+        (units.frequency, "50Hz", 50.0),
+        (units.impedance, "50 ohm", 50.0), (units.impedance, "50ohm", 50.0), (units.impedance, "50Ω", 50.0),
+        (units.impedance, "1 kohm", 1000.0),
         (units.ratio, "10%", 0.1), (units.ratio, "7.5 %", 0.075), (units.number, "4.05", 4.05),
     ],
 )  # fmt: skip

@@ -97,6 +97,7 @@ def parse_board_file(path: Path, limits: Limits, problems: Problems) -> Plan:
     )
     if layers:
         check_layer_names(plan, layers, problems)
+    problems.found.sort(key=lambda problem: problem.line)
     return plan
 
 

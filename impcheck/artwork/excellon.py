@@ -1,8 +1,4 @@
-"""Excellon and XNC drill files. In: bytes; out: a DrillFile in mm, with the line of each hole.
-
-Units and digits are taken from the file where it states them (header or comments); else the readings that are usual are tried, and the one whose
-holes lie on the board is taken and remarked.
-"""
+"""Excellon and XNC drill files. In: bytes of one file, the board's extent in mm; out: a DrillFile, in mm, with the line of each hole."""
 
 from __future__ import annotations
 
@@ -10,97 +6,90 @@ import re
 
 import numpy as np
 
-from impcheck.artwork.excellon_format import Format, Stated, candidates, stated_format
-from impcheck.artwork.excellon_program import Program
+from impcheck.artwork.excellon_format import Extent, settle_format
+from impcheck.artwork.excellon_notes import noted_tools
+from impcheck.artwork.excellon_program import FARTHEST, MOST_PROBLEMS, Program
 from impcheck.artwork.limits import Limits
 from impcheck.artwork.parts import DrillFile
 from impcheck.errors import InputError, Problem, Remark, RemarkKind
 
-Box = tuple[float, float, float, float]
-MARGIN = 0.25  # of the board's size by which holes may lie outside it (tooling holes, coupons)
-_LOOKS_RIGHT = re.compile(r"\s*(M48|%|M7[12]\b|INCH|METRIC|T\d+|[XY][-+.\d]|G\d\d)")
+_DEFAULTS = Limits()
+_LOOKS = re.compile(
+    r"(?m)^\s*(?:N\d+\s*)?(?:M48\b|T\d+\s*(?:[A-Z]\s*[\d.]|$)|(?:G\d+\s*)*[XY]\s*[+-]?[\d.]+\s*(?:[A-Z]\s*[-+\d.]|$))", re.IGNORECASE
+)
+_GERBER = re.compile(r"%\s*(?:FS[LTD][AI]|MO(?:IN|MM)|ADD\d)|^G04[ A-Z]", re.MULTILINE)
 
 
-def read_excellon(data: bytes, file: str, limits: Limits | None = None, extent: Box | None = None) -> DrillFile:
-    """Reads a drill or rout file.
+def read_excellon(data: bytes, file: str, limits: Limits = _DEFAULTS, extent: Extent | None = None) -> DrillFile:
+    """Reads a drill or route file: holes, slots (G85 and routed), repeats, tools, plating and X2 attributes in comments.
 
-    `extent` (min x, min y, max x, max y) is the board's box in mm; it settles unit, zeros and digits where the file does not say. Raises InputError
-    for a file that is no drill file, that uses an undefined tool, that holds an unknown command, or that goes past a limit.
+    extent: min x, min y, max x, max y in mm of the board. It settles unit, digits and zeros where the file does not state them: the reading
+    is taken under which the holes lie on the board; without it the usual one. Either way a remark says so. Raises InputError with the line of
+    each mistake (at most 20): a hole without a tool or diameter, an unknown or unreadable command, a limit, a file that is cut short.
     """
-    limits = limits or Limits()
-    lines = _lines(data, file, limits)
-    stated = stated_format(lines)
-    remarks: list[Remark] = []
-    tried: list[tuple[float, int, Program]] = []
-    for order, reading in enumerate(candidates(stated)):
-        program = Program(file, limits, reading)
-        program.run(lines)
-        tried.append((0.0 if extent is None else _badness(program, extent), order, program))
-        if extent is None or program.problems.found or not program.holes or not program.ambiguous and stated.metric is not None:
-            break
-    _, _, best = min(tried, key=lambda found: found[:2])
-    best.problems.raise_if_any()
-    if best.holes:
-        remarks += _guesses(best, stated, file, extent)
-    return _drill_file(file, best, remarks)
-
-
-def _guesses(program: Program, stated: Stated, file: str, extent: Box | None) -> list[Remark]:
-    missing = stated.missing() if program.ambiguous else ("its unit" if stated.metric is None else "")
-    if not missing:
-        return []
-    how = "taken as is usual" if extent is None else "of the usual readings the one was taken whose holes lie on the board"
-    return [Remark(RemarkKind.GUESS, f"the file does not say {missing}; {how}: {program.reading}", file)]
-
-
-def _lines(data: bytes, file: str, limits: Limits) -> list[str]:
-    if len(data) > limits.file_bytes:
-        raise InputError(Problem(file, 0, f"the file is larger than {limits.file_bytes} bytes (limit file_bytes)", "leave it out of the package"))
-    if not data.strip():
-        raise InputError(Problem(file, 0, "the file is empty", "export the drill file again"))
-    if b"\0" in data:
-        raise InputError(Problem(file, 0, "this is a binary file, no drill file", "name an Excellon or XNC file"))
-    lines = re.split(r"\r\n|\n|\r", data.decode("latin-1"))
-    if not any(_LOOKS_RIGHT.match(line) for line in lines[:500]):
-        raise InputError(Problem(file, 1, "this is no drill file: it begins with no header, tool or coordinate", "name an Excellon or XNC file"))
-    return lines
-
-
-def _badness(program: Program, extent: Box) -> float:
-    """0 where all holes lie on the board and spread over it as far as they may; the more the worse."""
-    if not program.holes or program.problems.found:
-        return 100.0
-    x0, y0, x1, y1 = extent
-    width, height = max(x1 - x0, 1e-6), max(y1 - y0, 1e-6)
-    at = np.array([hole.start for hole in program.holes] + [hole.end for hole in program.holes])
-    off = (
-        (at[:, 0] < x0 - MARGIN * width)
-        | (at[:, 0] > x1 + MARGIN * width)
-        | (at[:, 1] < y0 - MARGIN * height)
-        | (at[:, 1] > y1 + MARGIN * height)
-    )
-    spread = max(float(np.ptp(at[:, 0])) / width, float(np.ptp(at[:, 1])) / height)
-    diameter = np.array([hole.diameter for hole in program.holes])
-    odd = float(np.mean((diameter < 0.04) | (diameter > 10.0)))
-    return 10.0 * float(np.mean(off)) + 5.0 * odd + max(0.0, 1.0 - spread)
-
-
-def _drill_file(file: str, program: Program, remarks: list[Remark]) -> DrillFile:
-    holes = program.holes
+    lines, whole = _lines(data, file, limits)
+    form, remarks = settle_format(lines, file, extent)
+    chosen = any(re.match(r"\s*T\d", line) for line in lines)
+    program = Program(file, limits, form, noted_tools(lines, form.unit), chosen)
+    program.run(lines)
+    holes = np.frombuffer(program.geometry, dtype=np.float64).reshape(-1, 5)
+    problems = program.problems
+    if problems and not len(holes) and not any(re.match(r"\s*(M48|%)", line) for line in lines):
+        problems = [Problem(file, problems[0].line, f"this is no drill file: {problems[0].message}", "name an Excellon or XNC file")]
+    elif not problems and not program.ended and not whole and not re.search(r"M00\s*$", lines[-1]):
+        problems = [Problem(file, len(lines), "the file ends in the middle, without M30", "export or copy the drill file again")]
+    elif not problems and program.in_header:
+        problems = [Problem(file, len(lines), "the file ends in its header", "export or copy the drill file again")]
+    info = np.frombuffer(program.info, dtype=np.intc).astype(np.int32).reshape(-1, 4)
+    far = np.flatnonzero(~(np.abs(holes[:, :4]).max(axis=1, initial=0.0) <= FARTHEST))
+    if len(far):
+        x, y = holes[far[0], 2:4]
+        said = f"{len(far)} holes lie farther out than any board reaches, the first at ({x:.4g}, {y:.4g}) mm"
+        remedy = f"the numbers were read as {form}; state their format, as in METRIC,TZ,000.000"
+        problems = [*problems, Problem(file, int(info[far[0], 0]), said, remedy)]
+    if problems:
+        raise InputError(sorted(problems, key=lambda problem: problem.line)[:MOST_PROBLEMS])
+    remarks += program.remarks()
+    if not program.ended and not re.search(r"M00\s*$", "\n".join(lines[-3:]).strip()):
+        remarks += (Remark(RemarkKind.ODD, "the drill file does not end with M30; it may be cut short", file, program.last_line),)
+    plated = info[:, 1].astype(np.int8)
+    plated[plated < 0] = program.notes.of_file()
+    names = program.notes.attributes.objects
     return DrillFile(
         file=file,
-        attributes=dict(program.attributes),
-        start=np.array([hole.start for hole in holes], float).reshape(-1, 2),
-        end=np.array([hole.end for hole in holes], float).reshape(-1, 2),
-        diameter=np.array([hole.diameter for hole in holes], float),
-        plated=np.array([hole.plated for hole in holes], np.int8),
-        line=np.array([hole.line for hole in holes], np.int32),
-        net=np.array([hole.net for hole in holes], np.int32),
-        pin=np.array([hole.pin for hole in holes], np.int32),
-        nets=tuple(program.names.nets),
-        pins=tuple(program.names.pins),
-        remarks=tuple(dict.fromkeys((*remarks, *program.remarks))),
+        attributes=dict(program.notes.attributes.file),
+        start=holes[:, 0:2].copy(),
+        end=holes[:, 2:4].copy(),
+        diameter=holes[:, 4].copy(),
+        plated=plated,
+        line=info[:, 0].copy(),
+        net=info[:, 2].copy(),
+        pin=info[:, 3].copy(),
+        nets=tuple(names.nets),
+        pins=tuple(names.pins),
+        remarks=remarks,
     )
 
 
-__all__ = ["Format", "read_excellon"]
+def _lines(data: bytes, file: str, limits: Limits) -> tuple[list[str], bool]:
+    """The lines of a text file that may be a drill file, and whether the last one is complete."""
+    if len(data) > limits.file_bytes:
+        raise InputError(Problem(file, 0, f"the file has {len(data):,} bytes", f"limit file_bytes = {limits.file_bytes:,}"))
+    data = data.removeprefix(b"\xef\xbb\xbf").rstrip(b"\x00\x1a")  # paper tape and old systems end a file so
+    if not data.strip():
+        raise InputError(Problem(file, 0, "the file is empty", "export the drill file again"))
+    if b"\x00" in data[:4096]:
+        raise InputError(Problem(file, 0, "this is a binary file, no drill file", "name an Excellon or XNC file"))
+    try:
+        text = data.decode("utf-8")
+    except UnicodeDecodeError:
+        text = data.decode("latin-1")
+    if _GERBER.search(text[:100_000]):
+        raise InputError(Problem(file, 0, "this is a Gerber file, no Excellon drill file", "name it with the ending .gbr"))
+    if not _LOOKS.search(text):
+        raise InputError(Problem(file, 0, "this is no drill file: it holds no header, tool or coordinate", "name an Excellon or XNC file"))
+    lines = re.split(r"\r\n|\r|\n", text)
+    whole = lines[-1].strip() == ""
+    while len(lines) > 1 and not lines[-1].strip():
+        lines.pop()
+    return lines, whole

@@ -1,348 +1,398 @@
-"""The statements of a drill file carried out. In: lines and a Format; out: holes and slots in mm with their lines."""
+"""Carries out the blocks of a drill file. In: its lines and a Format; out: columns of holes and slots in mm, problems and remarks.
+
+Written from the Excellon CNC-7 command set and the XNC Format Specification (Ucamco 2021), both cited from memory.
+"""
 
 from __future__ import annotations
 
-import math
 import re
-from dataclasses import dataclass, replace
+from array import array
+from collections.abc import Callable, Sequence
 
 from impcheck.artwork.excellon_format import Format
-from impcheck.artwork.gerber.attributes import Attributes
+from impcheck.artwork.excellon_notes import Notes, NotedTool
+from impcheck.artwork.excellon_route import Route
+from impcheck.artwork.excellon_tools import Tools
 from impcheck.artwork.limits import Limits
-from impcheck.errors import InputError, Problem, Problems, Remark, RemarkKind
+from impcheck.errors import InputError, Problem, Remark, RemarkKind
 
+FARTHEST = 5_000.0  # mm; no board reaches farther out
 MOST_PROBLEMS = 20
-CHORD = 0.001  # mm, of routed arcs
-FARTHEST = 1e5  # mm, no board is larger
-_WORD = re.compile(r"\s*([A-Z])\s*([-+]?[0-9.]*)")
-_TOOL = re.compile(r"T(\d+)")
-_TABLE = re.compile(r";\s*(?:T(\d+)\s*=?\s*(?:HOLESIZE\s+\d+\.?\s*=)?|HOLESIZE\s+(\d+)\.?\s*=)\s*([0-9.]+)\s*(MM|INCH(?:ES)?|IN|MILS?|\")?", re.IGNORECASE)
-_UNITS = {"MM": 1.0, "INCH": 25.4, "INCHES": 25.4, "IN": 25.4, '"': 25.4, "MIL": 0.0254, "MILS": 0.0254}
-HARMLESS = {"M00", "M01", "M06", "M09", "M14", "M18", "M45", "M47", "M97", "M98", "M99", "G04", "G40", "G07", "G98"}
-Point = tuple[float, float]
-
-
-@dataclass(frozen=True)
-class Hole:
-    """One hole; a slot has start != end."""
-
-    start: Point
-    end: Point
-    diameter: float
-    plated: int  # 1, 0, -1 not said
-    line: int
-    net: int
-    pin: int
+_NUMBER = r"[+-]?(?:\d+\.?\d*|\.\d+)"
+_HIT = re.compile(rf"\s*(?:X({_NUMBER}))?(?:Y({_NUMBER}))?\s*")
+_WORD = re.compile(rf"([A-Z])({_NUMBER})")
+_SETTING = re.compile(
+    r"(?:INCH|METRIC|FMAT|ICI|VER|ATC|AFS|BLKD|CCW|CP|DETECT|DN|DTMDIST|EXDA|FSB|HPCK|LCOR|NCSL|OM48|OSTOP|OTCLMP|PCKPARA?M|PF|PLTOFF|RSB|R,|SBK"
+    r"|SG|SIXM|T,|TCST|UP|ZA|ZC|ZS|P,|[ZSFB][+-]?[\d.]+$|M4[57](?!\d)|\$)"
+)
+_UNREAD = {
+    "G32": "a routed circle cycle", "G33": "a routed circle cycle", "G82": "a dual in-line cycle", "G83": "an eight-pin cycle",
+    "G84": "a circle cycle", "M70": "a repeat with swapped axes", "M80": "a mirrored repeat", "M90": "a mirrored repeat", "M99": "a subroutine",
+}  # fmt: skip
+# Stops, tips and lights of the machine, feeds, and words whose effect is told elsewhere (M71, M72, G70, G71 in the Format).
+_NO_EFFECT = {"M06", "M09", "M18", "M21", "M22", "M47", "M60", "M71", "M72", "M14", "G07", "G70", "G71", "G80"}
 
 
 class Program:
-    """Runs one file under one reading of its numbers."""
+    """The machine while it works through one file. Each hole is five numbers (start, end, diameter) and four integers."""
 
-    def __init__(self, file: str, limits: Limits, reading: Format) -> None:
-        self.file, self.limits, self.reading = file, limits, reading
-        self.holes: list[Hole] = []
-        self.problems = Problems()
-        self.remarks: list[Remark] = []
-        self.ambiguous = False  # a number without a decimal point was met
-        self._notes = Attributes()
-        self.names = self._notes.objects
-        self._net, self._pin = -1, -1
-        self._tools: dict[int, float] = {}
-        self._plated_tools: dict[int, int] = {}
-        self._comment_tools: dict[int, float] = {}
-        self._tool: int | None = None
-        self._plated = -1
-        self._aperture_plated = -1
-        self._at: Point = (0.0, 0.0)
-        self._zero: Point = (0.0, 0.0)
-        self._mode = "drill"  # or "rout"
-        self._motion = 0  # 0 move, 1 line, 2 clockwise, 3 counter-clockwise
-        self._down = False
-        self._incremental = False
-        self._header = False
-        self._pattern: int | None = None
-        self._block: list[Hole] = []
-        self._ended = False
+    def __init__(self, file: str, limits: Limits, form: Format, noted: dict[int, NotedTool], number_of_tools: bool) -> None:
+        self.file, self.limits = file, limits
+        self.number: Callable[[str], float] = form.reader()
+        self.notes = Notes()
+        self.tools = Tools(noted, form.unit, self.number)
+        self.route = Route(self._add, self._remark)
+        self.geometry, self.info = array("d"), array("i")  # (x0, y0, x1, y1, diameter) and (line, plated, net, pin) of each hole
+        self.problems: list[Problem] = []
+        self._remarks: dict[tuple[RemarkKind, str], list[int]] = {}
+        self.x = self.y = 0.0
+        self.incremental = self.in_header = self.ended = self.text = False
+        self.tool: int | None = None
+        self.named: int | None = None  # the tool last named in the header
+        self.diameter: float | None = None
+        self.plated = -1
+        self.body = False  # past the header: ;TYPE= now speaks of holes, not of tools
+        self.counted = bool(noted) and not number_of_tools  # no T words: M00 changes to the next tool of the table
+        self.first: int | None = None  # first hole of the pattern being recorded
+        self.pattern: tuple[int, int] | None = None
+        self.moved = (0.0, 0.0, 0)  # offset of the last repeat of the pattern, and how many there were
+        self.blamed: set[object] = set()
+        self.last_line = 0
 
-    @property
-    def attributes(self) -> dict[str, tuple[str, ...]]:
-        """File attributes from `; #@! TF` comments."""
-        return self._notes.file
-
-    def run(self, lines: list[str]) -> None:
-        """Carries out every line; what is wrong stands in `problems` afterwards."""
+    def run(self, lines: Sequence[str]) -> None:
+        """Works through all lines. Raises InputError where a limit is met."""
+        if self.counted:
+            self._select(min(self.tools.noted), 0)
+        hit, number_of = _HIT.fullmatch, self.number
+        geometry, info, most = self.geometry, self.info, self.limits.objects * 4
         for number, raw in enumerate(lines, 1):
-            line = raw.strip()
-            if not line:
+            if self._plain() and (match := hit(raw)) and (match[1] or match[2]):
+                x, y = match.groups()
+                try:
+                    if x:
+                        self.x = number_of(x)
+                    if y:
+                        self.y = number_of(y)
+                except (ValueError, OverflowError):
+                    self._problem(number, f"the coordinate '{raw.strip()[:40]}' is too long", "export the drill file again")
+                    continue
+                geometry.extend((self.x, self.y, self.x, self.y, self.diameter or 0.0))
+                info.extend((number, self.plated, self.notes.net, self.notes.pin))
+                self.last_line = number
+                if len(info) > most:
+                    raise self._too_many(number)
                 continue
-            try:
-                if line.startswith(";"):
-                    self._comment(line, number)
-                elif self._ended:
-                    self._remark(f"what follows the end of the program in line {number} is left out", number)
-                    break
-                else:
-                    self._statement(line.upper(), number)
-            except ValueError as error:
-                self._problem(number, str(error), "export the drill file again")
-            if len(self.problems.found) >= MOST_PROBLEMS:
+            self._line(raw, number)
+            if len(self.problems) >= MOST_PROBLEMS or self.ended is None:
                 break
-        if not self._ended and not self.problems.found:
-            self._remark("the file has no end (M30): it may be cut off", len(lines))
+        self.route.lift(self.x, self.y, self.last_line)
 
-    def _problem(self, line: int, message: str, remedy: str) -> None:
-        self.problems.add(self.file, line, message, remedy)
+    def remarks(self) -> tuple[Remark, ...]:
+        """All remarks, each text once, at its first line."""
+        found = []
+        for (kind, text), lines in self._remarks.items():
+            times = f" ({len(lines)} times)" if len(lines) > 1 else ""
+            found.append(Remark(kind, text + times, self.file, lines[0]))
+        return tuple(found)
+
+    def _plain(self) -> bool:
+        """True while a line of coordinates is one hole."""
+        return not (self.in_header or self.ended or self.text or self.route.on or self.incremental or self.diameter is None)
+
+    def _problem(self, line: int, message: str, remedy: str, key: object = None) -> None:
+        if key is None or key not in self.blamed:
+            self.problems.append(Problem(self.file, line, message, remedy))
+            self.blamed.add(key)
 
     def _remark(self, text: str, line: int, kind: RemarkKind = RemarkKind.ODD) -> None:
-        self.remarks.append(Remark(kind, text, self.file, line))
+        self._remarks.setdefault((kind, text), []).append(line)
 
-    # comments: attributes, plating, tool tables
+    def _too_many(self, line: int) -> InputError:
+        said = f"the file drills more than {self.limits.objects:,} holes"
+        return InputError(Problem(self.file, line, said, f"limit objects = {self.limits.objects:,}"))
 
-    def _comment(self, line: str, number: int) -> None:
-        text = line[1:].strip()
-        if text.startswith("#@!"):
-            command = text[3:].strip()
-            kind, rest = command[:2], command[2:].lstrip()
-            if kind in ("TF", "TA", "TO", "TD"):
-                odd = self._notes.apply(kind, rest, number)
-                if odd:
-                    self._remark(odd, number)
-                _, self._net, self._pin, _ = self.names.changes[-1]
-                function = self._notes.aperture.get(".AperFunction", ())
-                self._aperture_plated = {"Plated": 1, "NonPlated": 0}.get(function[0], -1) if function else -1
+    def _line(self, raw: str, number: int) -> None:
+        text, semicolon, comment = raw.partition(";")
+        if semicolon:
+            odd = self.notes.read(comment, number)
+            if odd:
+                self._remark(odd, number)
+            self._settle_plating()
+        text = re.sub(r"\([^)]*\)?|\s", "", text).upper()
+        text = re.sub(r"^N\d+", "", text)
+        if text.startswith("/"):
+            text = text[1:]
+            if text:
+                self._remark("an optional block (/) was carried out", number)
+        if not text:
             return
-        upper = text.upper().replace(" ", "")
-        if upper.startswith("TYPE="):
-            self._plated = {"PLATED": 1, "NON_PLATED": 0, "NONPLATED": 0}.get(upper[5:], -1)
-        elif match := _TABLE.match(line):
-            tool = int(match[1] or match[2])
-            unit = _UNITS[match[4].upper()] if match[4] else self.reading.unit
-            size = float(match[3]) * unit
-            self._comment_tools.setdefault(tool, size)
-
-    # statements
-
-    def _statement(self, line: str, number: int) -> None:
-        line = re.sub(r"^N\d+\s*", "", line)
-        line = re.sub(r"\([^)]*\)", "", line).strip()
-        if not line:
+        if self.ended:
+            if text != "%":
+                self._remark("what follows the end of the program (M30) was left out", number)
             return
-        if line == "M48":
-            self._header = True
-        elif line in ("%", "M95"):
-            self._header = False
-        elif line.startswith(("METRIC", "INCH", "M71", "M72", "FMAT", "VER", "DETECT", "ATC", "OM48", "SBK", "SG", "R,", "BLKD", "AFS", "CCW", "CP", "UP", "DN", "TCST", "PCKPARAM")):
-            if line.startswith("FMAT") and not line.endswith("2"):
-                self._remark(f"command format {line} is read like FMAT,2", number)
-        elif line.startswith("ICI"):
-            self._incremental = line.endswith("ON")
-        elif line.startswith("T") and _TOOL.match(line):
-            self._tool_statement(line, number)
-        elif line.startswith("R") and self._repeat(line, number):
-            pass
-        elif line[0] in "XYGMIJA":
-            self._words(line, number)
+        self.last_line = number
+        if self.text:
+            self.text = False
+            return
+        if text in ("%", "M95"):
+            if self.in_header:
+                self.in_header, self.body = False, True
+                self.notes.type = -1
+        elif text == "M48":
+            self.in_header = True
+        elif text.startswith(("M97", "M98")):
+            self.text = True
+            self._remark("drilled text (M97, M98) was left out", number, RemarkKind.LIMIT)
+        elif _SETTING.match(text):
+            self._setting(text, number)
         else:
-            raise ValueError(f"unknown command '{line[:40]}'")
+            words = _WORD.findall(text)
+            if sum(len(letter) + len(value) for letter, value in words) == len(text):
+                self._block(words, number)
+            elif self.in_header and text[0] not in "TXYG":
+                self._remark(f"'{raw.strip()[:40]}' in the header is not known; it has no effect here", number)
+            else:
+                self._problem(number, f"'{raw.strip()[:40]}' is no drill command", "export the drill file again, as Excellon or XNC")
 
-    def _tool_statement(self, line: str, number: int) -> None:
-        match = _TOOL.match(line)
-        assert match is not None
-        digits = match[1]
-        code = int(digits) if len(digits) <= 2 else int(digits[:-2]) if len(digits) == 4 else int(digits)  # T0101: tool 1, compensation 1
-        rest = line[match.end() :]
-        size = re.search(r"C\s*([0-9.]+)", rest)
-        if size:
-            text = size[1]
-            self._tools[code] = float(text) * self.reading.unit if "." in text else self._coordinate(text)
-            self._plated_tools[code] = self._aperture_plated if self._aperture_plated >= 0 else self._plated
-        unknown = re.sub(r"[CFSBHZ]\s*[-+]?[0-9.]*", "", rest)
-        if self._header and not size:
-            if code not in self._comment_tools:
-                self._tools.pop(code, None)
-            return
-        if not self._header:
-            self._tool = code if code or 0 in self._tools else None  # T0 puts the tool away, unless a file numbers from 0
-            if unknown.strip() and re.match(r"[XYG]", unknown.strip()):
-                self._words(re.sub(r"^T\d+", "", line) if not size else unknown, number)
+    def _setting(self, text: str, number: int) -> None:
+        if text.startswith("ICI"):
+            self.incremental = text in ("ICI", "ICI,ON")
+        elif text.startswith("FMAT") and text != "FMAT,2":
+            self._remark(f"the command format {text} is read like FMAT,2", number)
 
-    def _repeat(self, line: str, number: int) -> bool:
-        """R3X1Y0: the last hole three times more, each a step farther. False where the line is none."""
-        match = re.fullmatch(r"R(\d+)((?:[XY][-+]?[0-9.]+)*)", line)
-        if match is None:
-            return False
-        times = int(match[1])
-        self._bound(times, number)
-        step = self._pairs(match[2])
-        dx, dy = step.get("X", 0.0), step.get("Y", 0.0)
-        x, y = self._at
-        for k in range(1, times + 1):
-            self._hole((x + k * dx, y + k * dy), None, number)
-        self._at = (x + times * dx, y + times * dy)
-        return True
-
-    def _pairs(self, text: str) -> dict[str, float]:
-        return {letter: self._coordinate(value) for letter, value in _WORD.findall(text)}
-
-    def _words(self, line: str, number: int) -> None:
-        position = 0
-        pending: dict[str, float] = {}
-        slot_from: Point | None = None
-        while position < len(line):
-            match = _WORD.match(line, position)
-            if match is None or not match[2]:
-                raise ValueError(f"unknown command '{line[:40]}'")
-            letter, value = match[1], match[2]
-            position = match.end()
-            if letter == "G":
+    def _block(self, words: list[tuple[str, str]], number: int) -> None:
+        """One line of words."""
+        place: dict[str, float] = {}
+        slot: tuple[float, float] | None = None
+        repeat: int | None = None
+        tool: int | None = None
+        size: str | None = None
+        step = False
+        for index, (letter, value) in enumerate(words):
+            if letter in "XYIJA":
+                if self.in_header and letter in "XY":
+                    self._remark("the header does not end with %; the first coordinate ends it", number)
+                    self.in_header, self.body = False, True
+                    if self.named is not None:
+                        self._select(self.named, number)
+                if letter in place:
+                    self._go(place, slot, number)
+                    place, slot = {}, None
+                try:
+                    place[letter] = self.number(value)
+                except (ValueError, OverflowError):
+                    place[letter] = float("inf")
+                if not abs(place[letter]) <= FARTHEST:
+                    said = f"{letter}{value[:24]} is {place[letter]:.4g} mm, farther out than any board reaches"
+                    self._problem(number, said, "state the format of the numbers, as in METRIC,TZ,000.000", "far")
+                    return
+            elif letter == "G":
                 code = f"G{int(float(value)):02d}"
-                if code == "G85":
-                    slot_from = self._target(pending)
-                    pending = {}
+                if code in ("G85", "G87"):
+                    slot = self._target(place)
+                    place = {}
+                elif code == "G04":
+                    return  # a pause, whose X is a time
                 elif code == "G93":
-                    zero = self._pairs(line[position:])
-                    self._zero = (zero.get("X", 0.0), zero.get("Y", 0.0))
+                    self._zero(words[index + 1 :], number)
                     return
                 else:
                     self._preparatory(code, number)
             elif letter == "M":
-                self._auxiliary(f"M{int(float(value)):02d}", line[position:], number)
-                if int(float(value)) in (2, 47, 97, 98, 99):
-                    return
-            elif letter in "XYIJA":
-                pending[letter] = self._coordinate(value)
-            elif letter in "FSZ":
-                continue
+                code = f"M{int(float(value)):02d}"
+                if code == "M02" and index + 1 < len(words):
+                    step = True
+                    continue
+                if place and code not in ("M30", "M00", "M02"):
+                    self._go(place, slot, number)
+                    place, slot = {}, None
+                elif place:
+                    self._go(place, slot, number)
+                    place = {}
+                self._auxiliary(code, number)
             elif letter == "T":
-                self._tool = int(value)
-            else:
-                raise ValueError(f"unknown command '{line[:40]}'")
-        if slot_from is not None:
-            self._hole(slot_from, self._target(pending, slot_from), number)
-            self._at = self._target(pending, slot_from)
-        elif pending.keys() & {"X", "Y"}:
-            self._go(pending, number)
+                tool = self.tools.code(value, any(other == "C" for other, _ in words[index + 1 :]))
+            elif letter == "C" and tool is not None:
+                size = value
+            elif letter == "R":
+                repeat = int(float(value))
+            elif letter not in "FSBHZ":
+                self._problem(number, f"the word {letter}{value[:24]} is not known", "export the drill file again, as Excellon or XNC")
+                return
+            if tool is not None and (index + 1 == len(words) or words[index + 1][0] not in "CFSBHZ"):
+                self._tool(tool, size, number)
+                tool = None
+        if step:
+            self._step(place, repeat or 1, number)
+        elif repeat is not None:
+            self._repeat(place, repeat, number)
+        elif place or slot is not None:
+            self._go(place, slot, number)
+
+    # tools
+
+    def _tool(self, code: int, size: str | None, number: int) -> None:
+        if size is not None or self.in_header:
+            odd = self.tools.define(code, size, self.notes, number)
+            if odd:
+                self._remark(odd, number)
+        if self.in_header:
+            self.named = code
+        elif code == 0 and self.tools.diameter(0) is None:
+            self.tool = self.diameter = None  # the tool is put away
+            self.route.end(self.x, self.y, number)
+        else:
+            self._select(code, number)
+
+    def _select(self, code: int, number: int) -> None:
+        self.route.end(self.x, self.y, number)
+        self.tool, self.diameter = code, self.tools.diameter(code)
+        if code not in self.tools.table and self.diameter is not None:
+            self._remark("tool diameters are those of the table in the comments", self.tools.noted[code].line or number, RemarkKind.GUESS)
+        self._settle_plating()
+
+    def _settle_plating(self) -> None:
+        """What the next holes are: by the comment in the body, else their tool, else the whole file (filled in at the end)."""
+        tool = -1 if self.tool is None else self.tools.plated(self.tool)
+        self.plated = self.notes.type if self.body and self.notes.type >= 0 else tool
+        if self.plated < 0 and self.tool is not None:
+            self.plated = self.notes.by_start(self.tool)
+
+    # holes
+
+    def _add(self, x0: float, y0: float, x1: float, y1: float, number: int) -> None:
+        if self.diameter is None:
+            self._blame_tool(number)
+            return
+        self.geometry.extend((x0, y0, x1, y1, self.diameter))
+        self.info.extend((number, self.plated, self.notes.net, self.notes.pin))
+        if len(self.info) > self.limits.objects * 4:
+            raise self._too_many(number)
+
+    def _blame_tool(self, number: int) -> None:
+        if self.tool is None:
+            self._problem(number, "a hole is drilled before any tool is selected", "write a tool before it, as in T1", "none")
+        elif self.tool not in self.tools.table:
+            remedy = f"define it in the header, as in T{self.tool}C0.300"
+            self._problem(number, f"tool T{self.tool} is not defined", remedy, self.tool)
+        else:
+            said = "has no diameter" if self.tools.table[self.tool].diameter is None else "has an impossible diameter"
+            remedy = f"write it in the header, as in T{self.tool}C0.300, or in a comment, as in ; T{self.tool} = 0.300mm"
+            self._problem(number, f"tool T{self.tool} {said}", remedy, self.tool)
+
+    def _target(self, place: dict[str, float]) -> tuple[float, float]:
+        if self.incremental:
+            return self.x + place.get("X", 0.0), self.y + place.get("Y", 0.0)
+        return place.get("X", self.x), place.get("Y", self.y)
+
+    def _go(self, place: dict[str, float], slot: tuple[float, float] | None, number: int) -> None:
+        """Moves to a place and makes there, or on the way, what the mode asks for."""
+        if slot is not None:
+            self.x, self.y = slot
+        x, y = self._target(place)
+        if slot is not None:
+            if not place:
+                self._problem(number, "a slot (G85) has no end", "write it as X...Y...G85X...Y...")
+            self._add(*slot, x, y, number)
+        elif self.route.on:
+            said = self.route.move((self.x, self.y), (x, y), place, number)
+            if said:
+                self._problem(number, said, "write an arc as G02X...Y...A<radius>, or with I and J for its centre")
+        elif place.keys() & {"X", "Y"}:
+            self._add(x, y, x, y, number)
+        self.x, self.y = x, y
+
+    def _zero(self, words: list[tuple[str, str]], number: int) -> None:
+        if any(float(value) != 0 for letter, value in words if letter in "XY"):
+            said = "G93 moves the origin, so that the holes lie elsewhere than their numbers say"
+            self._problem(number, said, "export the drill file with its origin at 0")
 
     def _preparatory(self, code: str, number: int) -> None:
         if code in ("G00", "G01", "G02", "G03"):
-            self._mode, self._motion = "rout", int(code[1:])
-        elif code in ("G05", "G81", "G80"):
-            self._mode, self._down = "drill", False
+            self.route.begin(int(code[1:]), self.x, self.y, number)
+        elif code in ("G05", "G81"):
+            self.route.end(self.x, self.y, number)
         elif code in ("G90", "G91"):
-            self._incremental = code == "G91"
-        elif code in ("G41", "G42"):
-            self._remark(f"cutter compensation {code} is not applied: the routed path is taken as the middle of the tool", number, RemarkKind.LIMIT)
-        elif code not in HARMLESS:
-            raise ValueError(f"unknown command '{code}'")
+            self.incremental = code == "G91"
+        elif code in ("G40", "G41", "G42"):
+            if code != "G40":
+                said = "cutter compensation (G41, G42) was not applied: routed slots lie along the path as written"
+                self._remark(said, number, RemarkKind.LIMIT)
+        elif code not in _NO_EFFECT:
+            self._unread(code, number)
 
-    def _auxiliary(self, code: str, rest: str, number: int) -> None:
+    def _auxiliary(self, code: str, number: int) -> None:
         if code == "M15":
-            self._down = True
+            self.route.plunge(self.x, self.y)
         elif code in ("M16", "M17"):
-            self._down = False
-        elif code == "M25":
-            self._pattern, self._block = len(self.holes), []
-        elif code == "M01" and self._pattern is not None:
-            self._block = self.holes[self._pattern :]
-            self._pattern = None
-        elif code == "M02" and rest.strip() and self._block:
-            step = self._pairs(rest)
-            self._bound(len(self._block), number)
-            dx, dy = step.get("X", 0.0), step.get("Y", 0.0)
-            self._block = [replace(h, start=(h.start[0] + dx, h.start[1] + dy), end=(h.end[0] + dx, h.end[1] + dy)) for h in self._block]
-            self.holes.extend(self._block)
+            self.route.lift(self.x, self.y, number)
+        elif code == "M00" and self.counted:
+            later = [tool for tool in self.tools.noted if self.tool is not None and tool > self.tool]
+            if later:
+                self._select(min(later), number)
+        elif code == "M00":
+            self.route.end(self.x, self.y, number)
         elif code in ("M30", "M02"):
-            self._ended = True
+            if code == "M30" or self.pattern is None:
+                self.ended = True
+        elif code == "M25":
+            self.first, self.pattern = self._count(), None
+        elif code == "M01":
+            if self.first is not None:
+                self.pattern, self.moved, self.first = (self.first, self._count()), (0.0, 0.0, 0), None
         elif code == "M08":
-            self._block = []
-        elif code in ("M71", "M72"):
-            pass
-        elif code not in HARMLESS:
-            raise ValueError(f"unknown command '{code}'")
+            self.pattern = None
+        elif code not in _NO_EFFECT:
+            self._unread(code, number)
 
-    # geometry
+    def _unread(self, code: str, number: int) -> None:
+        what = _UNREAD.get(code)
+        said = f"{code} ({what}) is not read" if what else f"the code {code} is not known"
+        self._problem(number, said, "export the drill file with plain holes, slots and routes", code)
 
-    def _coordinate(self, text: str) -> float:
-        if "." not in text:
-            self.ambiguous = True
-        try:
-            value = self.reading.number(text)
-        except ValueError:
-            raise ValueError(f"'{text}' is no number") from None
-        if not abs(value) < FARTHEST:
-            raise ValueError(f"coordinate {text} is {value:.3g} mm, farther than any board reaches")
-        return value
+    # repeats
 
-    def _target(self, pending: dict[str, float], start: Point | None = None) -> Point:
-        x, y = start or self._at
-        if self._incremental:
-            return x + pending.get("X", 0.0), y + pending.get("Y", 0.0)
-        zx, zy = self._zero
-        return (pending["X"] + zx if "X" in pending else x), (pending["Y"] + zy if "Y" in pending else y)
+    def _count(self) -> int:
+        return len(self.info) // 4
 
-    def _go(self, pending: dict[str, float], number: int) -> None:
-        start, end = self._at, self._target(pending)
-        self._at = end
-        if self._mode == "drill":
-            self._hole(end, None, number)
-        elif self._motion == 0:
+    def _copy(self, first: int, last: int, x: float, y: float, number: int) -> None:
+        """Holes first..last-1 once more, moved."""
+        for hole in range(first, last):
+            x0, y0, x1, y1, diameter = self.geometry[5 * hole : 5 * hole + 5]
+            self.geometry.extend((x0 + x, y0 + y, x1 + x, y1 + y, diameter))
+            self.info.extend((number, *self.info[4 * hole + 1 : 4 * hole + 4]))
+
+    def _repeat(self, place: dict[str, float], times: int, number: int) -> None:
+        """R3X2Y0: the last hole or slot three times more, each a step farther."""
+        x, y = place.get("X", 0.0), place.get("Y", 0.0)
+        last = self._count()
+        if not last or self.diameter is None:
+            if self.diameter is None:
+                self._blame_tool(number)
+            else:
+                self._problem(number, "a repeat (R) follows no hole", "write the hole before it")
             return
-        elif self._motion == 1:
-            self._hole(start, end, number)  # a route without M15 is meant to cut
-        else:
-            for a, b in self._arc(start, end, pending):
-                self._hole(a, b, number)
+        if last + times > self.limits.objects:
+            raise self._too_many(number)
+        for time in range(1, times + 1):
+            self._copy(last - 1, last, time * x, time * y, number)
+        self.x, self.y = self.x + times * x, self.y + times * y
 
-    def _arc(self, start: Point, end: Point, pending: dict[str, float]) -> list[tuple[Point, Point]]:
-        clockwise = self._motion == 2
-        if "A" in pending:
-            radius = pending["A"]
-            chord = math.dist(start, end)
-            if chord == 0:
-                raise ValueError("an arc by its radius needs two different ends")
-            radius = max(radius, chord / 2)
-            lift = math.sqrt(max(0.0, radius**2 - (chord / 2) ** 2)) * (1 if clockwise else -1)
-            ux, uy = (end[0] - start[0]) / chord, (end[1] - start[1]) / chord
-            centre = ((start[0] + end[0]) / 2 + uy * lift, (start[1] + end[1]) / 2 - ux * lift)
-        elif pending.keys() & {"I", "J"}:
-            centre = (start[0] + pending.get("I", 0.0), start[1] + pending.get("J", 0.0))
-        else:
-            raise ValueError("an arc needs its radius (A) or its centre (I, J)")
-        radius = math.dist(start, centre)
-        a0 = math.atan2(start[1] - centre[1], start[0] - centre[0])
-        a1 = math.atan2(end[1] - centre[1], end[0] - centre[0])
-        sweep = (a0 - a1 if clockwise else a1 - a0) % (2 * math.pi) or 2 * math.pi
-        step = 2 * math.acos(max(0.0, 1 - CHORD / max(radius, CHORD)))
-        count = max(1, math.ceil(sweep / max(step, 1e-3)))
-        sign = -1.0 if clockwise else 1.0
-        points = [(centre[0] + radius * math.cos(a0 + sign * sweep * k / count), centre[1] + radius * math.sin(a0 + sign * sweep * k / count)) for k in range(count + 1)]
-        points[0], points[-1] = start, end
-        return list(zip(points[:-1], points[1:], strict=True))
-
-    def _bound(self, more: int, number: int) -> None:
-        if len(self.holes) + more > self.limits.objects:
-            raise InputError(Problem(self.file, number, f"more than {self.limits.objects} holes (limit objects)", "split the file, or raise the limit"))
-
-    def _hole(self, start: Point, end: Point | None, number: int) -> None:
-        if self._pattern is not None and self._mode == "drill":
-            pass  # the first copy of a pattern is drilled where it stands
-        if self._tool is None:
-            self._problem(number, "a hole before any tool is chosen", "write a tool (T1) before it")
-            self._tool = -1
+    def _step(self, place: dict[str, float], times: int, number: int) -> None:
+        """M02X10: the pattern between M25 and M01 once more, each copy counted from the one before."""
+        if self.pattern is None:
+            if self.problems:
+                return
+            self._problem(number, "a repeat (M02) follows no pattern", "a pattern stands between M25 and M01")
             return
-        size = self._tools.get(self._tool, self._comment_tools.get(self._tool))
-        if size is None:
-            if self._tool >= 0:
-                self._problem(number, f"tool T{self._tool} has no diameter", f"define it in the header: T{self._tool}C0.3")
-                self._tools[self._tool] = math.nan
-            return
-        if not 0 < size < FARTHEST:
-            if not math.isnan(size):
-                self._problem(number, f"tool T{self._tool} has the diameter {size:g} mm", "give it a diameter over zero")
-                self._tools[self._tool] = math.nan
-            return
-        self._bound(1, number)
-        plated = self._plated_tools.get(self._tool, self._plated)
-        self.holes.append(Hole(start, end or start, size, plated, number, self._net, self._pin))
-
-
+        first, last = self.pattern
+        if self._count() + times * (last - first) > self.limits.objects or times > self.limits.objects:
+            raise self._too_many(number)
+        x, y, before = self.moved
+        for _ in range(times if last > first else 0):
+            x, y = x + place.get("X", 0.0), y + place.get("Y", 0.0)
+            self._copy(first, last, x, y, number)
+        self.moved = (x, y, before + 1)
+        if before:
+            said = "several repeats of one pattern (M02): each offset is counted from the copy before it"
+            self._remark(said, number, RemarkKind.GUESS)

@@ -52,13 +52,14 @@ _EXCELLON_BODY = re.compile(rb"^[ \t]*T\d{1,4}[ \t]*\r?\n[ \t]*(?:G0?5[ \t]*\r?\
 _IPC356 = re.compile(
     rb"^(?:P  (?:JOB|UNITS|VER|TITLE|CODE|NUM|REV|IMAGE|NNAME)|3[0-8][0-9].{20,60}X[+\- ]?\d)", re.MULTILINE | re.IGNORECASE
 )
-_DRILL_SUFFIXES = (".drl", ".xln", ".exc", ".tap", ".nc", ".cnc", ".ncd", ".drill")
+DRILL_SUFFIXES = (".drl", ".xln", ".exc", ".tap", ".nc", ".cnc", ".ncd", ".drill")
+_TEXT = bytes([9, 10, 12, 13, *range(32, 127)])
 _BINARY = re.compile(rb"\A(?:%PDF|PK\x03\x04|\x89PNG|\xff\xd8\xff|GIF8|BM|\x1f\x8b|7z\xbc\xaf|Rar!)|\x00")
 
 
 def content_kind(head: bytes) -> str:
     """What the first bytes of a file look like: gerber, excellon, netlist, job, binary, or "" (some text, or nothing)."""
-    if _BINARY.search(head[:2000]):
+    if _BINARY.search(head[:2000]) or len(head.translate(None, _TEXT)) > 0.2 * len(head):
         return "binary"
     text = head.removeprefix(b"\xef\xbb\xbf").lstrip()
     if text.startswith(b"{"):
@@ -113,7 +114,7 @@ def role_of_function(function: Sequence[str], source: Source) -> Role:
 def role_of_name(name: str, kind: str) -> Role:
     """The role a file's name suggests, by the habits of layout tools. `kind` is what its content looks like: by it a drill file is one."""
     part, side, order, plated = role_by_name(name)
-    if kind == "excellon" or (kind == "" and name.lower().endswith(_DRILL_SUFFIXES)):  # empty ones are told of later
+    if kind == "excellon" or (kind == "" and name.lower().endswith(DRILL_SUFFIXES)):  # empty ones are told of later
         return Role("drill", Source.NAME)
     if kind in ("netlist", "job", "binary") or (part == "drill" and kind == "gerber"):
         return Role("other", Source.NAME)
@@ -135,6 +136,7 @@ def span_in(name: str, count: int) -> tuple[int, int] | None:
     """The span a drill file's name says: 1-based first and last copper layer of `count`, None where it says none."""
     stem = name.rsplit("/", 1)[-1].rsplit(".", 1)[0].casefold()
     match = re.search(r"(?<![a-z])(?:l|ly|layer)_?(\d{1,2})(?:-|_|to|_to_)+(?:l|ly|layer)_?(\d{1,2})(?!\d)", stem)
+    match = match or re.search(r"(?<![a-z])(?:vias?|blind|buried|drills?)[-_](\d{1,2})[-_](\d{1,2})(?!\d)", stem)
     if match:
         first, last = int(match[1]), int(match[2])
     else:
@@ -144,6 +146,11 @@ def span_in(name: str, count: int) -> tuple[int, int] | None:
             return None
         first, last = (words[word] if word in words else int(word[2:]) + 1 for word in match.groups())
     return (first, last) if 1 <= first < last <= count else None
+
+
+def back_drill_in(name: str) -> bool:
+    """True where a drill file's name says that it holds back-drills."""
+    return re.search(r"back[-_ ]?drill", name.rsplit("/", 1)[-1], re.IGNORECASE) is not None
 
 
 def number_inner(roles: Mapping[str, Role], free: Sequence[int]) -> dict[str, int]:

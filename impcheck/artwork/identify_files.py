@@ -6,7 +6,19 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 
 from impcheck.artwork.boardfile import DrillWish, Plan
-from impcheck.artwork.identify import SNIFF, UNKNOWN, Role, Source, content_kind, function_in, number_inner, role_of_function, role_of_name
+from impcheck.artwork.identify import (
+    DRILL_SUFFIXES,
+    SNIFF,
+    UNKNOWN,
+    Role,
+    Source,
+    back_drill_in,
+    content_kind,
+    function_in,
+    number_inner,
+    role_of_function,
+    role_of_name,
+)
 from impcheck.artwork.package import Package
 from impcheck.artwork.stackup import Stackup
 from impcheck.errors import InputError, Problems, Remark, RemarkKind
@@ -256,6 +268,10 @@ class _Identifier:
                 if role.last is not None and role.last > self.count:
                     said = f"{source} says its holes reach copper layer {role.last}, and the stackup has {self.count} copper layers"
                     self.problems.add(name, 0, said, "correct the stackup, or name the layers under `drills:`")
+                elif role.layer is None and back_drill_in(name):
+                    said = "by its name it holds back-drills, and nothing says from where and how deep"
+                    remedy = f"write `- {{file: {name}, backdrill: {{from: ..., keep: ...}}}}` under `drills:` in {self.plan.board.file}"
+                    self.problems.add(name, 0, said, remedy)
                 self.parts.drills[name] = (role, None)
         listed = {name for name, (_, wish) in self.parts.drills.items() if wish is not None}
         same = {(role.layer, role.last, role.plated) for name, (role, _) in self.parts.drills.items() if self.kinds[name] == "excellon"}
@@ -272,6 +288,8 @@ class _Identifier:
                 continue
             if role.part == "copper" and role.source is Source.NAME and not self.quarrel:
                 self.remark(RemarkKind.ODD, "looks like copper by its name and has no place in the stackup; left out", name)
+            elif self.kinds.get(name) == "binary" and name.lower().endswith(DRILL_SUFFIXES):
+                self.remark(RemarkKind.ODD, "a drill file by its name, but no text; left out", name)
             elif not role.part and self.kinds.get(name) == "gerber":
                 self.remark(RemarkKind.ODD, "neither an attribute nor its name says what this Gerber file is; left out", name)
 

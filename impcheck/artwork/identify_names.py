@@ -20,7 +20,7 @@ _SUFFIXES: dict[str, tuple[str, str]] = {
     "gto": ("other", ""), "gbo": ("other", ""), "gtp": ("other", ""), "gbp": ("other", ""), "plc": ("other", ""), "pls": ("other", ""),
     "crc": ("other", ""), "crs": ("other", ""), "sst": ("other", ""), "ssb": ("other", ""), "spt": ("other", ""), "spb": ("other", ""),
     "tsk": ("other", ""), "bsk": ("other", ""), "tsp": ("other", ""), "bsp": ("other", ""), "fab": ("other", ""), "gd1": ("other", ""),
-    "gg1": ("other", ""), "gpt": ("other", ""), "gpb": ("other", ""), "drd": ("other", ""),
+    "gg1": ("other", ""), "gpt": ("other", ""), "gpb": ("other", ""), "drd": ("other", ""), "ast": ("other", ""), "asb": ("other", ""),
 }  # fmt: skip
 _GERBER_SUFFIXES = ("gbr", "ger", "grb", "gbx", "pho", "art", "gdo", "gb", "274", "rs274x", "x274", "fph", "gerber", "")
 _OTHER_WORDS = (

@@ -2,129 +2,141 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import shapely
-from numpy.typing import NDArray
+from shapely.geometry.base import BaseGeometry
 
-from impcheck.artwork.image import Floats, Image, Ints, Kind
+from impcheck.artwork.image import Bools, Floats, Image, Ints, Kind
 from impcheck.artwork.parts import Artwork
 from impcheck.copper.apertures import aperture_shape
 from impcheck.copper.barrels import barrels_of, holes_through
 from impcheck.copper.copper import Copper, LayerCopper
-from impcheck.copper.polarity import apply_polarity, cut
+from impcheck.copper.outline import outline_shape
+from impcheck.copper.polarity import apply_polarity
 from impcheck.copper.regions import region_shapes
+from impcheck.copper.shapes import Shapes, solid_parts
 from impcheck.copper.strokes import stroke_shapes
-from impcheck.copper.shapes import Shapes, arcs_to_points
 
-MARGIN = 1.0  # mm, how far the background of a negative layer reaches beyond a board whose outline is not known
-OUTLINE_GRID = 0.001  # mm, ends of outline strokes this near are one point
+MARGIN = 1.0  # mm: how far a negative layer reaches beyond the other layers' copper where the board's outline is not known
+
+
+def rebuild(artwork: Artwork, chord_error: float = 0.001) -> Copper:
+    """The copper of a board: pieces per layer, barrels, and the openings of the solder mask.
+
+    chord_error: mm, how far a chord may lie inside the arc it stands for. Holes without plating, and back-drills on the layers they clear,
+    are cut out of the copper; plated holes are not, their barrel fills them.
+    """
+    outline = outline_shape(artwork.outline, chord_error)
+    images = [
+        image if item.negative is None or item.negative == image.negative else replace(image, negative=item.negative)
+        for item, image in zip(artwork.stackup.coppers, artwork.layers, strict=True)
+    ]
+    drawn = [object_shapes(image, chord_error) for image in images]
+    box = _bounds([shape for (shape, _), image in zip(drawn, images, strict=True) if not image.negative])
+    if box is None:
+        box = _bounds([shape for shape, _ in drawn]) or (0.0, 0.0, 0.0, 0.0)
+    background = outline if outline is not None else shapely.box(box[0] - MARGIN, box[1] - MARGIN, box[2] + MARGIN, box[3] + MARGIN)
+    layers = tuple(
+        _layer((name, index), image, shapes, background, holes_through(artwork, index, chord_error))
+        for index, (name, image, shapes) in enumerate(zip(artwork.names, images, drawn, strict=True))
+    )
+    openings = tuple(_openings(image, background, chord_error) for image in (artwork.mask_top, artwork.mask_bottom))
+    return Copper(layers, barrels_of(artwork), box if outline is None else outline.bounds, (openings[0], openings[1]))
+
+
+def rebuild_layer(
+    name: str,
+    index: int,
+    image: Image,
+    *,
+    background: BaseGeometry | None = None,
+    holes: Shapes | None = None,
+    chord_error: float = 0.001,
+) -> LayerCopper:
+    """One layer alone. `background`: what a negative image is cut from (left out: a box around what is drawn); `holes`: (k,) polygons taken
+    out at the end; chord_error: mm."""
+    drawn = object_shapes(image, chord_error)
+    if background is None:
+        x0, y0, x1, y1 = _bounds([drawn[0]]) or (0.0, 0.0, 0.0, 0.0)
+        background = shapely.box(x0 - MARGIN, y0 - MARGIN, x1 + MARGIN, y1 + MARGIN)
+    return _layer((name, index), image, drawn, background, np.empty(0, object) if holes is None else holes)
 
 
 def object_shapes(image: Image, chord_error: float) -> tuple[Shapes, Ints]:
-    """Polygons of all objects of an image in drawing order, whatever their polarity, and the object each belongs to (an object may give
-    several, or none where its aperture is empty)."""
-    shapes: list[Shapes] = []
-    owners: list[NDArray[np.int32]] = []
-    for part, owner in (flash_shapes(image, chord_error), stroke_shapes(image, chord_error), region_shapes(image, chord_error)):
-        shapes.append(part)
-        owners.append(owner)
-    shape, owner = np.concatenate(shapes), np.concatenate(owners)
+    """(m,) polygons of all objects of an image in drawing order, whatever their polarity, and the object each belongs to. An object may
+    give several, or none where its aperture has no size."""
+    parts = (flash_shapes(image, chord_error), stroke_shapes(image, chord_error), region_shapes(image, chord_error))
+    shape, owner = (np.concatenate(column) for column in zip(*parts, strict=True))
     order = np.argsort(owner, kind="stable")
     return shape[order], owner[order]
 
 
 def flash_shapes(image: Image, chord_error: float) -> tuple[Shapes, Ints]:
-    """Polygons of all flashes: one template an aperture and transform, moved to every place."""
+    """(m,) polygons of all flashes and the object each belongs to: one template an aperture and transform, moved to every place."""
     flashes = np.flatnonzero(image.kind == Kind.FLASH)
-    shapes: list[Shapes] = []
-    owners: list[NDArray[np.int32]] = []
-    key = image.aperture[flashes].astype(np.int64) * (len(image.transforms) + 1) + image.transform[flashes]
+    shapes, owners = [np.empty(0, object)], [np.empty(0, np.int32)]
+    key = image.aperture[flashes].astype(np.int64) * len(image.transforms) + image.transform[flashes]
     for value in np.unique(key):
         mine = flashes[key == value]
-        first = mine[0]
-        template = aperture_shape(image.apertures[image.aperture[first]], image.transforms[image.transform[first]], chord_error)
-        for part in shapely.get_parts(template):
-            if part.geom_type == "Polygon" and part.area > 0:
-                shapes.append(moved(shapely.orient_polygons(part), image.start[mine]))
-                owners.append(mine.astype(np.int32))
-    return _joined(shapes, owners)
-
-
-def moved(template: shapely.Polygon, places: Floats) -> Shapes:
-    """Copies of one polygon at (n, 2) places."""
-    count = len(places)
-    _, coords, (ring_first, poly_first) = shapely.to_ragged_array([template])
-    coords = (coords[None, :, :2] + places[:, None, :]).reshape(-1, 2)
-    length, rings = ring_first[-1], poly_first[-1]
-    ring_offsets = np.append((np.arange(count)[:, None] * length + ring_first[None, :-1]).ravel(), count * length)
-    return shapely.from_ragged_array(shapely.GeometryType.POLYGON, coords, (ring_offsets, np.arange(count + 1) * rings))
-
-
-def _joined(shapes: list[Shapes], owners: list[NDArray[np.int32]]) -> tuple[Shapes, Ints]:
-    if not shapes:
-        return np.empty(0, object), np.empty(0, np.int32)
+        template = aperture_shape(image.apertures[image.aperture[mine[0]]], image.transforms[image.transform[mine[0]]], chord_error)
+        for part in solid_parts(np.array([template], object))[0]:
+            shapes.append(moved(part, image.start[mine]))
+            owners.append(mine.astype(np.int32))
     return np.concatenate(shapes), np.concatenate(owners)
 
 
-def rebuild_layer(name: str, index: int, image: Image, background: shapely.Geometry | None = None, holes: Shapes | None = None, chord_error: float = 0.001) -> LayerCopper:
-    """One layer. `background` is what a negative image is cut from; `holes` are taken out at the end."""
-    shape, owner = object_shapes(image, chord_error)
-    dark = image.dark[owner] if len(owner) else np.empty(0, bool)
+def moved(template: BaseGeometry, places: Floats) -> Shapes:
+    """(n,) copies of one polygon at (n, 2) places."""
+    count = len(places)
+    _, coords, (ring_first, polygon_first) = shapely.to_ragged_array([template])
+    coords = (coords[None, :, :2] + places[:, None, :]).reshape(-1, 2)
+    length, rings = ring_first[-1], polygon_first[-1]
+    ring_offsets = np.append((np.arange(count)[:, None] * length + ring_first[None, :-1]).ravel(), count * length)
+    copies = shapely.from_ragged_array(shapely.GeometryType.POLYGON, coords, (ring_offsets, np.arange(count + 1) * rings))
+    return np.asarray(copies, object)
+
+
+def _layer(name: tuple[str, int], image: Image, drawn: tuple[Shapes, Ints], background: BaseGeometry, holes: Shapes) -> LayerCopper:
+    shape, owner = drawn
+    dark = image.dark[owner] != image.negative
     if image.negative:
-        back = shapely.get_parts(background if background is not None else _around(shape))
-        shape = np.concatenate([back, shape])
-        owner = np.concatenate([np.full(len(back), -1, np.int32), owner])
-        dark = np.concatenate([np.ones(len(back), bool), ~dark])
+        back = solid_parts(np.array([background], object))[0]
+        shape, owner = np.concatenate([back, shape]), np.concatenate([np.full(len(back), -1, np.int32), owner])
+        dark = np.concatenate([np.ones(len(back), bool), dark])
+    shape, owner = np.concatenate([shape, holes]), np.concatenate([owner, np.full(len(holes), -1, np.int32)])
+    dark = np.concatenate([dark, np.zeros(len(holes), bool)])
     pieces, owner, whole = apply_polarity(shape, owner, dark)
-    if holes is not None and len(holes) and len(pieces):
-        pieces, owner, whole = cut(pieces, owner, whole, holes)
-    pieces = shapely.orient_polygons(pieces)
-    width = np.full(len(pieces), np.nan)
-    drawn = (owner >= 0) & whole
-    mine = owner[drawn]
-    stroke = (image.kind[mine] == Kind.DRAW) | (image.kind[mine] == Kind.ARC)
-    round_width = np.array([a.parameters[0] if a.shape == "circle" and not a.hole else np.nan for a in image.apertures] or [np.nan])
-    scale = np.array([t.scale for t in image.transforms])
-    width[drawn] = np.where(stroke, round_width[image.aperture[mine]] * scale[image.transform[mine]], np.nan)
-    return LayerCopper(name, index, image, pieces, owner, whole, width)
+    return LayerCopper(*name, image, shapely.orient_polygons(pieces), owner.astype(np.int32), whole, _widths(image, owner, whole))
 
 
-def _around(shape: Shapes) -> shapely.Geometry:
-    x0, y0, x1, y1 = shapely.total_bounds(shape) if len(shape) else (0, 0, 0, 0)
-    return shapely.box(x0 - MARGIN, y0 - MARGIN, x1 + MARGIN, y1 + MARGIN)
+def _widths(image: Image, owner: Ints, whole: Bools) -> Floats:
+    width = np.full(len(owner), np.nan)
+    mine = np.flatnonzero(whole & (owner >= 0))
+    mine = mine[np.isin(image.kind[owner[mine]], (Kind.DRAW, Kind.ARC))]
+    if len(mine):
+        drawn = np.array([a.parameters[0] if a.shape == "circle" and not a.hole else np.nan for a in image.apertures])
+        scale = np.array([t.scale for t in image.transforms])
+        width[mine] = drawn[image.aperture[owner[mine]]] * scale[image.transform[owner[mine]]]
+    return width
 
 
-def rebuild(artwork: Artwork, chord_error: float = 0.001) -> Copper:
-    """The copper of a board: pieces per layer to `chord_error` mm, barrels, and the openings of the solder mask."""
-    outline = outline_shape(artwork.outline, chord_error)
-    layers = tuple(
-        rebuild_layer(name, index, image, outline, holes_through(artwork, index, chord_error), chord_error)
-        for index, (name, image) in enumerate(zip(artwork.names, artwork.layers, strict=True))
-    )
-    boxes = [shapely.total_bounds(layer.shape) for layer in layers if len(layer.shape)]
-    everything = np.array(boxes) if boxes else np.zeros((1, 4))
-    limits = np.concatenate([everything[:, :2].min(axis=0), everything[:, 2:].max(axis=0)]) if outline is None else np.array(outline.bounds)
-    openings = tuple(rebuild_layer("mask", -1, image, outline, None, chord_error).shape if image is not None else np.empty(0, object) for image in (artwork.mask_top, artwork.mask_bottom))
-    x0, y0, x1, y1 = limits.tolist()
-    return Copper(layers, barrels_of(artwork), (x0, y0, x1, y1), (openings[0], openings[1]))
+def _openings(image: Image | None, background: BaseGeometry, chord_error: float) -> Shapes:
+    """What is open in a solder mask. Mask files draw the openings, and say so as a negative file function; one that is negative by IP alone
+    draws the mask."""
+    if image is None:
+        return np.empty(0, object)
+    openings = image.negative and image.attributes.get(".FilePolarity", ())[:1] == ("Negative",)
+    return rebuild_layer(
+        "mask", -1, replace(image, negative=False) if openings else image, background=background, chord_error=chord_error
+    ).shape
 
 
-def outline_shape(image: Image | None, chord_error: float) -> shapely.Geometry | None:
-    """The area inside the board outline, from the centrelines of its strokes (cut-outs taken out) or its regions; None where nothing closes."""
-    if image is None or len(image) == 0:
+def _bounds(shapes: list[Shapes]) -> tuple[float, float, float, float] | None:
+    everything = [shapely.total_bounds(shape) for shape in shapes if len(shape)]
+    if not everything:
         return None
-    strokes = (image.kind == Kind.DRAW) | (image.kind == Kind.ARC)
-    lines = [np.array([a, b]) for a, b in zip(image.start[image.kind == Kind.DRAW], image.end[image.kind == Kind.DRAW], strict=True)]
-    arcs = np.flatnonzero(image.kind == Kind.ARC)
-    lines += arcs_to_points(image.start[arcs], image.centre[arcs], image.sweep[arcs], image.end[arcs], chord_error)
-    faces: list[shapely.Geometry] = []
-    if strokes.any():
-        drawn = shapely.set_precision(shapely.union_all([shapely.linestrings(line) for line in lines if len(np.unique(line, axis=0)) > 1]), OUTLINE_GRID)
-        faces = list(shapely.get_parts(shapely.polygonize([drawn])))
-    if not faces:
-        faces = list(region_shapes(image, chord_error)[0])
-    if not faces:
-        return None
-    whole = shapely.union_all([shapely.polygons(shapely.get_exterior_ring(face)) for face in faces])
-    inner = [face for face in faces if not shapely.get_exterior_ring(face).intersects(shapely.boundary(whole))]
-    return shapely.difference(whole, shapely.union_all(inner)) if inner else whole
+    boxes = np.array(everything)
+    low, high = boxes[:, :2].min(axis=0), boxes[:, 2:].max(axis=0)
+    return float(low[0]), float(low[1]), float(high[0]), float(high[1])

@@ -46,4 +46,4 @@ class Copper:
     layers: tuple[LayerCopper, ...]
     barrels: Barrels
     outline_box: tuple[float, float, float, float]  # min x, min y, max x, max y of the board outline (of all copper where there is none)
-    mask_openings: tuple[NDArray[np.object_], NDArray[np.object_]]  # shapely polygons open in the top and bottom solder mask; empty where no mask file is there
+    mask_openings: tuple[NDArray[np.object_], NDArray[np.object_]]  # polygons open in the top and bottom mask; empty without a file

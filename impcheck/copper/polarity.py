@@ -5,79 +5,85 @@ from __future__ import annotations
 import numpy as np
 import shapely
 from numpy.typing import NDArray
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import connected_components
+from shapely.geometry.base import BaseGeometry
 
-Shapes = NDArray[np.object_]
+from impcheck.artwork.image import Bools, Ints
+from impcheck.copper.shapes import Rows, Shapes, solid_parts
 
-
-def apply_polarity(shape: Shapes, owner: NDArray[np.int32], dark: NDArray[np.bool_]) -> tuple[Shapes, NDArray[np.int32], NDArray[np.bool_]]:
-    """Pieces in drawing order -> (pieces left, their owners, whether each is untouched). A clear shape removes only what stands before it."""
-    if dark.all():
-        return shape, owner, np.ones(len(shape), bool)
-    change = np.flatnonzero(np.diff(dark.astype(np.int8))) + 1
-    bounds = [0, *change.tolist(), len(shape)]
-    left: list[Shapes] = []
-    owners: list[NDArray[np.int32]] = []
-    whole: list[NDArray[np.bool_]] = []
-    for begin, end in zip(bounds, bounds[1:], strict=False):
-        if dark[begin]:
-            left.append(shape[begin:end])
-            owners.append(owner[begin:end])
-            whole.append(np.ones(end - begin, bool))
-        elif left:
-            pieces, own, untouched = np.concatenate(left), np.concatenate(owners), np.concatenate(whole)
-            pieces, own, untouched = cut(pieces, own, untouched, shape[begin:end])
-            left, owners, whole = [pieces], [own], [untouched]
-    if not left:
-        return shape[:0], owner[:0], np.ones(0, bool)
-    return np.concatenate(left), np.concatenate(owners), np.concatenate(whole)
+SLIVER = 1e-12  # mm2: what a clear shape that only touches a piece takes away
 
 
-def cut(pieces: Shapes, owner: NDArray[np.int32], whole: NDArray[np.bool_], clear: Shapes) -> tuple[Shapes, NDArray[np.int32], NDArray[np.bool_]]:
-    """Takes clear shapes out of pieces. Clears wholly inside a piece become its holes without an overlay; only the others are subtracted."""
-    groups = disjoint(clear)
-    tree = shapely.STRtree(pieces)
-    which_clear, which_piece = tree.query(groups, predicate="intersects")
+def apply_polarity(shape: Shapes, owner: Ints, dark: Bools) -> tuple[Shapes, Ints, Bools]:
+    """(n,) polygons in drawing order -> pieces left, their owners, and whether each is its polygon as drawn.
+
+    A clear shape removes only what was drawn before it, so what is left of a dark shape is that shape without the clear ones that come
+    later and meet it: no union of layers is needed, and the cost does not grow with the number of changes of polarity.
+    """
+    pieces, order = shape[dark], np.flatnonzero(dark)
+    owner = owner[dark]
+    whole = np.ones(len(pieces), bool)
+    clear, clear_order = shape[~dark], np.flatnonzero(~dark)
+    if len(clear) == 0 or len(pieces) == 0:
+        return pieces, owner, whole
+    which_clear, which_piece = shapely.STRtree(pieces).query(clear, predicate="intersects")
+    later = clear_order[which_clear] > order[which_piece]
+    which_clear, which_piece = which_clear[later], which_piece[later]
     if len(which_piece) == 0:
         return pieces, owner, whole
-    order = np.argsort(which_piece, kind="stable")
-    which_clear, which_piece = which_clear[order], which_piece[order]
-    touched, first = np.unique(which_piece, return_index=True)
-    first = np.append(first, len(which_piece))
-    simple = shapely.get_num_interior_rings(groups) == 0
-    results: list[Shapes] = []
-    for position, index in enumerate(touched.tolist()):
-        piece = pieces[index]
-        mine = groups[which_clear[first[position] : first[position + 1]]]
-        flat = simple[which_clear[first[position] : first[position + 1]]]
-        shapely.prepare(piece)
-        inside = flat & shapely.contains_properly(piece, mine)
-        rings = [shapely.get_exterior_ring(g) for g in mine[inside]]
-        if rings:
-            holes = list(piece.interiors) + rings
-            piece = shapely.polygons(shapely.get_exterior_ring(piece), holes=holes)
-        rest = mine[~inside]
-        if len(rest):
-            piece = shapely.difference(piece, shapely.union_all(rest) if len(rest) > 1 else rest[0])
-        parts = shapely.get_parts(piece)
-        results.append(parts[(shapely.get_type_id(parts) == 3) & (shapely.area(parts) > 0)])
-    keep = np.ones(len(pieces), bool)
-    keep[touched] = False
-    made = np.concatenate(results)
-    counts = [len(r) for r in results]
-    return (
-        np.concatenate([pieces[keep], made]),
-        np.concatenate([owner[keep], np.repeat(owner[touched], counts)]),
-        np.concatenate([whole[keep], np.zeros(len(made), bool)]),
-    )
+    made, made_from, kept = _cut(pieces, clear, which_piece, which_clear)
+    whole[which_piece[np.isin(which_piece, kept, invert=True)]] = False
+    untouched = whole.copy()
+    position = np.concatenate([np.flatnonzero(untouched), made_from])
+    result = np.concatenate([pieces[untouched], made])
+    back = np.argsort(position, kind="stable")
+    position = position[back]
+    return result[back], owner[position], whole[position]
 
 
-def disjoint(shapes: Shapes) -> Shapes:
-    """Overlapping shapes united; those that meet nothing stay as they are."""
-    tree = shapely.STRtree(shapes)
-    a, b = tree.query(shapes, predicate="intersects")
-    alone = np.ones(len(shapes), bool)
-    alone[a[a != b]] = False
-    if alone.all():
-        return shapes
-    merged = shapely.get_parts(shapely.union_all(shapes[~alone]))
-    return np.concatenate([shapes[alone], merged[shapely.get_type_id(merged) == 3]])
+def _cut(pieces: Shapes, clear: Shapes, which_piece: Rows, which_clear: Rows) -> tuple[Shapes, Rows, Rows]:
+    """What is left of the pieces that meet clear shapes: polygons, the piece each is left of, and the pieces that lose nothing."""
+    sort = np.lexsort((which_clear, which_piece))
+    which_piece, which_clear = which_piece[sort], which_clear[sort]
+    touched, first, times = np.unique(which_piece, return_index=True, return_counts=True)
+    results = np.empty(len(touched), object)
+    single = times == 1
+    cutter = clear[which_clear[first]]
+    shapely.prepare(cutter[single])
+    gone = np.zeros(len(touched), bool)
+    gone[single] = shapely.covers(cutter[single], pieces[touched[single]])
+    quick = single & ~gone
+    quick[quick] = ~shapely.contains_properly(pieces[touched[quick]], cutter[quick])
+    results[gone] = shapely.Polygon()
+    results[quick] = shapely.difference(pieces[touched[quick]], cutter[quick])
+    cluster = _clusters(clear)
+    for index in np.flatnonzero(~gone & ~quick).tolist():
+        mine = which_clear[first[index] : first[index] + times[index]]
+        results[index] = _without(pieces[touched[index]], clear[mine], cluster[mine])
+    lost = shapely.area(pieces[touched]) - shapely.area(results) > SLIVER
+    made, part_of = solid_parts(results[lost])
+    return made, touched[lost][part_of], touched[~lost]
+
+
+def _clusters(shape: Shapes) -> Rows:
+    """(n,) number of the cluster of shapes that meet, directly or through others, each belongs to."""
+    a, b = shapely.STRtree(shape).query(shape, predicate="intersects")
+    graph = coo_array((np.ones(len(a), bool), (a, b)), shape=(len(shape), len(shape)))
+    return np.asarray(connected_components(graph, directed=False)[1], np.int64)
+
+
+def _without(piece: BaseGeometry, clear: Shapes, cluster: Rows) -> BaseGeometry:
+    """A piece without clear shapes. Those wholly inside become holes as they are; only those on its edge are subtracted by overlay."""
+    _, number, size = np.unique(cluster, return_inverse=True, return_counts=True)
+    together = size[number] > 1
+    if together.any():
+        united = shapely.get_parts(shapely.union_all(clear[together]))
+        clear = np.concatenate([clear[~together], united[shapely.get_type_id(united) == shapely.GeometryType.POLYGON]])
+    shapely.prepare(piece)
+    inside = (shapely.get_num_interior_rings(clear) == 0) & shapely.contains_properly(piece, clear)
+    if inside.any():
+        rings = [*shapely.get_rings(piece), *shapely.get_exterior_ring(clear[inside])]
+        piece = shapely.polygons(rings[0], holes=rings[1:])
+    rest: NDArray[np.object_] = clear[~inside]
+    return shapely.difference(piece, shapely.union_all(rest)) if len(rest) else piece

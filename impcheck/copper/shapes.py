@@ -1,4 +1,4 @@
-"""Apertures and strokes as polygons. In: sizes and places in mm; out: shapely polygons whose chords stay within a stated error."""
+"""Discs, strokes and arcs as polygons. In: sizes and places in mm; out: shapely polygons whose chords stay within a stated error."""
 
 from __future__ import annotations
 
@@ -7,22 +7,34 @@ import math
 import numpy as np
 import shapely
 from numpy.typing import NDArray
+from shapely.geometry.base import BaseGeometry
 
-Floats = NDArray[np.float64]
+from impcheck.artwork.image import Floats
+
 Shapes = NDArray[np.object_]
+Rows = NDArray[np.int64]
+
+COARSEST = math.pi / 4  # radians an arc's chord spans at most, however small the arc
 
 
 def segments_of(radius: float, angle: float, chord_error: float) -> int:
-    """Number of chords for an arc of `angle` radians and `radius` mm so that no chord lies more than `chord_error` mm inside the arc."""
-    if radius <= chord_error:
-        return max(1, math.ceil(abs(angle) / (math.pi / 4)))
-    step = 2.0 * math.acos(1.0 - chord_error / radius)
-    return max(1, math.ceil(abs(angle) / step - 1e-9))
+    """Number of chords for an arc of `angle` radians and `radius` mm so that none lies more than `chord_error` mm inside the arc."""
+    return int(chords(np.array([radius]), np.array([angle]), chord_error)[0])
+
+
+def chords(radius: Floats, angle: Floats, chord_error: float) -> Rows:
+    """(n,) numbers of chords, as segments_of. The vertices lie on the arc, the chords inside it by radius (1 - cos(step/2)) at most."""
+    ratio = np.minimum(chord_error / np.maximum(radius, chord_error), 1.0)
+    step = np.minimum(2.0 * np.arccos(1.0 - ratio), COARSEST)
+    return np.maximum(1, np.ceil(np.abs(angle) / step - 1e-9)).astype(np.int64)
 
 
 def stadiums(start: Floats, end: Floats, width: float, chord_error: float) -> Shapes:
-    """(n,) strokes of a round aperture of one width: stadium polygons, counter-clockwise, with vertices where the straight flanks begin, so
-    that the width between the flanks is exactly `width`. start, end: (n, 2) mm."""
+    """(n,) strokes of a round aperture of one width, as polygons, counter-clockwise. start, end: (n, 2) mm.
+
+    The caps have vertices where the straight flanks begin, so that the distance between the flanks is exactly `width`. A stroke without
+    length is a dot.
+    """
     half = segments_of(width / 2, math.pi, chord_error)
     theta = np.linspace(-math.pi / 2, math.pi / 2, half + 1)
     cap = (width / 2) * np.column_stack([np.cos(theta), np.sin(theta)])
@@ -33,48 +45,77 @@ def stadiums(start: Floats, end: Floats, width: float, chord_error: float) -> Sh
     front = np.einsum("nij,kj->nki", rotation, cap) + end[:, None, :]
     back = np.einsum("nij,kj->nki", rotation, -cap) + start[:, None, :]
     ring = np.concatenate([front, back, front[:, :1]], axis=1)
+    shapes = polygons(ring)
     dot = length == 0
-    shapes = shapely.polygons(ring)
     if dot.any():
-        shapes[dot] = shapely.polygons(_drop_double(ring[dot], half))
+        once = np.ones(ring.shape[1], bool)
+        once[[half + 1, 2 * half + 1]] = False  # a dot's two half circles share their ends
+        shapes[dot] = polygons(ring[dot][:, once])
     return shapes
 
 
-def _drop_double(ring: Floats, half: int) -> Floats:
-    keep = np.ones(ring.shape[1], bool)
-    keep[half + 1] = False  # a dot's two half circles share their ends
-    keep[2 * half + 1] = False
-    return ring[:, keep]
+def polygons(rings: Floats) -> Shapes:
+    """(n,) polygons of (n, k, 2) closed rings."""
+    return np.asarray(shapely.polygons(rings), object)
 
 
-def arcs_to_points(start: Floats, centre: Floats, sweep: Floats, end: Floats, chord_error: float) -> list[Floats]:
-    """Each circular arc as points from start to end, both included. start, centre, end: (n, 2) mm; sweep: (n,) radians."""
-    found = []
-    for (sx, sy), (cx, cy), angle, (ex, ey) in zip(start.tolist(), centre.tolist(), sweep.tolist(), end.tolist(), strict=True):
-        r0, r1 = math.hypot(sx - cx, sy - cy), math.hypot(ex - cx, ey - cy)
-        count = segments_of(max(r0, r1), angle, chord_error)
-        t = np.linspace(0.0, 1.0, count + 1)
-        phi = math.atan2(sy - cy, sx - cx) + angle * t
-        radius = r0 + (r1 - r0) * t
-        points = np.column_stack([cx + radius * np.cos(phi), cy + radius * np.sin(phi)])
-        points[0], points[-1] = (sx, sy), (ex, ey)
-        found.append(points)
-    return found
+def arc_points(start: Floats, centre: Floats, sweep: Floats, end: Floats, count: Rows) -> tuple[Floats, Rows]:
+    """Circular arcs as points: (m, 2) points of all arcs, arc k owning count[k] + 1 of them from its start to its end, and (m,) the arc of
+    each point. The radius goes evenly from that of the start to that of the end, where a file rounds them differently."""
+    arc = np.repeat(np.arange(len(count)), count + 1)
+    first = np.concatenate([[0], np.cumsum(count + 1)])[:-1]
+    t = (np.arange(len(arc)) - first[arc]) / count[arc]
+    spoke, last_spoke = start - centre, end - centre
+    r0, r1 = np.hypot(*spoke.T), np.hypot(*last_spoke.T)
+    phi = np.arctan2(spoke[:, 1], spoke[:, 0])[arc] + sweep[arc] * t
+    radius = r0[arc] + (r1 - r0)[arc] * t
+    points = centre[arc] + radius[:, None] * np.column_stack([np.cos(phi), np.sin(phi)])
+    points[first] = start
+    points[first + count] = end
+    return points, arc
 
 
-def circle(x: float, y: float, diameter: float, chord_error: float) -> shapely.Polygon:
-    """A disc."""
-    count = max(8, segments_of(diameter / 2, 2 * math.pi, chord_error))
+def radius_of(start: Floats, centre: Floats, end: Floats) -> Floats:
+    """(n,) larger of the two radii an arc is given with."""
+    return np.maximum(np.hypot(*(start - centre).T), np.hypot(*(end - centre).T))
+
+
+def disc(x: float, y: float, diameter: float, chord_error: float) -> BaseGeometry:
+    """A disc; empty where it has no size."""
+    if diameter <= 0:
+        return shapely.Polygon()
+    count = segments_of(diameter / 2, 2 * math.pi, chord_error)
     phi = np.linspace(0, 2 * math.pi, count, endpoint=False)
-    return shapely.polygons(np.column_stack([x + diameter / 2 * np.cos(phi), y + diameter / 2 * np.sin(phi)]))
+    return shapely.Polygon(np.column_stack([x + diameter / 2 * np.cos(phi), y + diameter / 2 * np.sin(phi)]))
 
 
-def box(x: float, y: float, width: float, height: float) -> shapely.Polygon:
-    """A rectangle around (x, y)."""
+def rectangle(x: float, y: float, width: float, height: float) -> BaseGeometry:
+    """A rectangle around (x, y); empty where it has no size."""
+    if width <= 0 or height <= 0:
+        return shapely.Polygon()
     return shapely.box(x - width / 2, y - height / 2, x + width / 2, y + height / 2)
 
 
-def regular(x: float, y: float, diameter: float, vertices: int, rotation: float) -> shapely.Polygon:
+def regular(x: float, y: float, diameter: float, vertices: int, rotation: float) -> BaseGeometry:
     """A regular polygon in a circle of `diameter`, its first vertex at `rotation` degrees."""
+    if diameter <= 0:
+        return shapely.Polygon()
     phi = math.radians(rotation) + np.arange(vertices) * (2 * math.pi / vertices)
-    return shapely.polygons(np.column_stack([x + diameter / 2 * np.cos(phi), y + diameter / 2 * np.sin(phi)]))
+    return shapely.Polygon(np.column_stack([x + diameter / 2 * np.cos(phi), y + diameter / 2 * np.sin(phi)]))
+
+
+def obround(width: float, height: float, chord_error: float) -> BaseGeometry:
+    """A rectangle around the origin whose shorter sides are half circles."""
+    if width <= 0 or height <= 0:
+        return shapely.Polygon()
+    reach = abs(width - height) / 2
+    along = np.array([[reach, 0.0]]) if width >= height else np.array([[0.0, reach]])
+    shape: BaseGeometry = stadiums(-along, along, min(width, height), chord_error)[0]
+    return shape
+
+
+def solid_parts(shape: Shapes) -> tuple[Shapes, Rows]:
+    """Polygons with an area among the parts of (n,) geometries, and (m,) the geometry each is a part of."""
+    parts, owner = shapely.get_parts(shape, return_index=True)
+    keep = (shapely.get_type_id(parts) == shapely.GeometryType.POLYGON) & (shapely.area(parts) > 0)
+    return np.asarray(parts[keep], object), np.asarray(owner[keep], np.int64)

@@ -60,8 +60,8 @@ def _of_run(run: Run, fields: RunProfile) -> list[Stretch]:
             Stretch(
                 layer=run.layer,
                 along=(float(s.begin[a]), float(s.end[b - 1])),
-                start=point_on(run, float(s.begin[a])),
-                end=point_on(run, float(s.end[b - 1])),
+                start=run.point_at(float(s.begin[a])),
+                end=run.point_at(float(s.end[b - 1])),
                 width=float(np.average(s.width[a:b], weights=weight)),
                 impedance=float(np.average(fields.impedance[a:b], weights=weight)),
                 eps_eff=float(np.average(fields.eps_eff[a:b], weights=weight)),
@@ -74,12 +74,3 @@ def _of_run(run: Run, fields: RunProfile) -> list[Stretch]:
         )
     return found
 
-
-def point_on(run: Run, along: float) -> tuple[float, float]:
-    """The point of a run's centreline at a path coordinate."""
-    step = np.hypot(*np.diff(run.line, axis=0).T)
-    reached = np.concatenate([[0.0], np.cumsum(step)])
-    total = reached[-1]
-    span = run.along[1] - run.along[0]
-    at = 0.0 if span <= 0 else (along - run.along[0]) / span * total
-    return float(np.interp(at, reached, run.line[:, 0])), float(np.interp(at, reached, run.line[:, 1]))

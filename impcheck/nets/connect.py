@@ -9,23 +9,41 @@ from impcheck.nets.declare import Declarer
 from impcheck.nets.evidence import Finder, gather
 from impcheck.nets.faults import find_faults
 from impcheck.nets.nets import Nets
-from impcheck.nets.returns import return_labels
-from impcheck.nets.touching import label
+from impcheck.nets.returns import named_returns, remark_on, returns_by_area
+from impcheck.nets.touching import label_copper
 
 
 def connect(artwork: Artwork, copper: Copper) -> Nets:
     """Finds which copper belongs to which net.
 
-    Raises InputError, with every problem found, where a declared net, pin, place, join or return net is nowhere in the files.
+    Raises InputError, with every problem found, where a declared net, pin, place, join or return net is nowhere in the files, or where a net's
+    end lies on another net.
     """
-    piece_label, barrel_label, count = label(copper.layers, copper.barrels)
-    evidence = gather(artwork, copper, piece_label, barrel_label)
+    piece_label, barrel_label, count = label_copper(copper.layers, copper.barrels)
+    finder = Finder(copper, piece_label, barrel_label)
+    evidence = gather(artwork, copper, finder)
     names = evidence.names()
     problems = Problems()
-    finder = Finder(copper, piece_label, barrel_label)
     declared = Declarer(artwork, finder, names, evidence.pins, problems).all()
     own = {label for net in declared for label in net.labels}
-    returns, shown, remarks = return_labels(artwork, copper, piece_label, names, own, problems)
+    remarks = list(evidence.remarks)
+    if artwork.board.returns:
+        returns, shown = named_returns(artwork.board, names, problems)
+        returns -= own
+    else:
+        returns = returns_by_area(copper, piece_label) - own
+        shown = tuple(sorted({names[label][0] if label in names else "unnamed copper" for label in returns}))
+        remarks.append(remark_on(shown, artwork.board.file))
     problems.raise_if_any()
-    faults = find_faults(copper, piece_label, barrel_label, evidence, {net.name for net in declared})
-    return Nets(piece_label, barrel_label, count, names, tuple(evidence.pins), returns, shown, tuple(declared), tuple(faults), (*evidence.remarks, *remarks))
+    return Nets(
+        piece_label=piece_label,
+        barrel_label=barrel_label,
+        count=count,
+        names=names,
+        pins=tuple(evidence.pins),
+        returns=returns,
+        return_names=shown,
+        declared=tuple(declared),
+        faults=tuple(find_faults(copper, finder, evidence, declared)),
+        remarks=tuple(remarks),
+    )

@@ -29,7 +29,8 @@ class Evidence:
     netlist_names: dict[int, Counter[str]] = field(default_factory=lambda: defaultdict(Counter))
     ties: set[frozenset[str]] = field(default_factory=set)  # names given to one pad together
     pins: list[BoardPin] = field(default_factory=list)
-    piece_names: list[tuple[Ints, tuple[str, ...]]] = field(default_factory=list)  # per layer: index into names for each piece, -1 none
+    piece_names: list[tuple[Ints, tuple[tuple[str, ...], ...]]] = field(default_factory=list)  # per layer: index into names a piece, -1 none
+    places: dict[tuple[int, str], list[tuple[tuple[float, float], int | None]]] = field(default_factory=lambda: defaultdict(list))
     anchored: set[tuple[str, int]] = field(default_factory=set)  # (name, label) with a pin, a netlist point or a named pad
     remarks: list[Remark] = field(default_factory=list)
 
@@ -49,7 +50,7 @@ class Finder:
         self.copper, self.piece_label, self.barrel_label = copper, piece_label, barrel_label
         self._trees: dict[int, shapely.STRtree] = {}
         middle = (copper.barrels.start + copper.barrels.end) / 2
-        self._barrels = shapely.STRtree(shapely.points(middle)) if len(middle) else None
+        self._barrels = shapely.STRtree(np.asarray(shapely.points(middle), object)) if len(middle) else None
 
     def tree(self, layer: int) -> shapely.STRtree:
         """The spatial index of a layer's pieces."""
@@ -84,11 +85,10 @@ class Finder:
         return found
 
 
-def gather(artwork: Artwork, copper: Copper, piece_label: tuple[Ints, ...], barrel_label: Ints) -> Evidence:
+def gather(artwork: Artwork, copper: Copper, finder: Finder) -> Evidence:
     """Goes through attributes, drills and netlist."""
     evidence = Evidence()
-    finder = Finder(copper, piece_label, barrel_label)
-    _attributes(artwork, copper, piece_label, finder, evidence)
+    _attributes(copper, finder, evidence)
     _drills(artwork, finder, evidence)
     _netlist(artwork, finder, evidence)
     unique: dict[tuple[str, str, int], BoardPin] = {}
@@ -98,8 +98,8 @@ def gather(artwork: Artwork, copper: Copper, piece_label: tuple[Ints, ...], barr
     return evidence
 
 
-def _attributes(artwork: Artwork, copper: Copper, piece_label: tuple[Ints, ...], finder: Finder, evidence: Evidence) -> None:
-    for layer, labels in zip(copper.layers, piece_label, strict=True):
+def _attributes(copper: Copper, finder: Finder, evidence: Evidence) -> None:
+    for layer, labels in zip(copper.layers, finder.piece_label, strict=True):
         image = layer.image
         drawn = layer.object >= 0
         owner = layer.object[drawn]
@@ -107,7 +107,7 @@ def _attributes(artwork: Artwork, copper: Copper, piece_label: tuple[Ints, ...],
         net[drawn] = image.net[owner]
         usable = np.array([bool(set(names) - set(UNCONNECTED)) for names in image.nets] or [False])
         net = np.where((net >= 0) & usable[net], net, -1)
-        evidence.piece_names.append((net, tuple(names[0] for names in image.nets)))
+        evidence.piece_names.append((net, image.nets))
         named = np.flatnonzero(net >= 0)
         flash = np.zeros(len(net), bool)
         flash[drawn] = image.kind[owner] == Kind.FLASH
@@ -146,6 +146,7 @@ def _drills(artwork: Artwork, finder: Finder, evidence: Evidence) -> None:
             for name in names:
                 evidence.attribute_names[label][name] += 1
                 evidence.anchored.add((name, label))
+                evidence.places[label, name].append(((place[0], place[1]), None))
             if holes.pin[hole] >= 0:
                 pin = holes.pins[holes.pin[hole]]
                 evidence.pins.append(BoardPin(pin.component, pin.number, (place[0], place[1]), None, label, names[0] if names else ""))
@@ -161,17 +162,19 @@ def _netlist(artwork: Artwork, finder: Finder, evidence: Evidence) -> None:
         mine, name = int(label[index]), points.net[index]
         if mine < 0:
             continue
+        x, y = points.at[index].tolist()
+        where = None if layer[index] < 0 else int(layer[index])
         if name not in UNCONNECTED:
             evidence.netlist_names[mine][name] += 1
             evidence.anchored.add((name, mine))
+            evidence.places[mine, name].append(((x, y), where))
         component = points.component[index]
         if component and component != "VIA":
-            x, y = points.at[index].tolist()
-            where = None if layer[index] < 0 else int(layer[index])
             evidence.pins.append(BoardPin(component, points.pin[index], (x, y), where, mine, "" if name in UNCONNECTED else name))
     if len(lost):
         first = lost[0]
-        text = f"{len(lost)} of {len(points.net)} netlist points lie on no copper, the first of net {points.net[first]} at ({points.at[first][0]:.3f}, {points.at[first][1]:.3f})"
+        x, y = points.at[first].tolist()
+        text = f"{len(lost)} of {len(points.net)} netlist points lie on no copper, the first of net {points.net[first]} at ({x:.3f}, {y:.3f})"
         evidence.remarks.append(Remark(RemarkKind.DISAGREEMENT, text, points.file, int(points.line[first])))
 
 

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
+
 import numpy as np
 import shapely
 from numpy.typing import NDArray
@@ -10,13 +12,11 @@ from scipy.sparse.csgraph import connected_components
 
 from impcheck.artwork.image import Floats, Ints, Kind
 from impcheck.copper.copper import Barrels, LayerCopper
-from impcheck.copper.shapes import stadiums
 
 TOUCH = 0.001  # mm: copper that comes this near is joined
-CHORD = 0.001
 
 
-def label(layers: tuple[LayerCopper, ...], barrels: Barrels) -> tuple[tuple[Ints, ...], Ints, int]:
+def label_copper(layers: tuple[LayerCopper, ...], barrels: Barrels) -> tuple[tuple[Ints, ...], Ints, int]:
     """Labels of the pieces of each layer, labels of the barrels, and the number of labels."""
     offsets = np.concatenate([[0], np.cumsum([len(layer.shape) for layer in layers])])
     pieces, count = int(offsets[-1]), len(barrels.diameter)
@@ -25,11 +25,13 @@ def label(layers: tuple[LayerCopper, ...], barrels: Barrels) -> tuple[tuple[Ints
         edges.append(touching(layer) + offset)
         edges.append(_barrel_edges(layer, barrels, offset, pieces))
     number, labels = _components(np.concatenate(edges), pieces + count)
-    per_layer = tuple(labels[a:b].astype(np.int32) for a, b in zip(offsets, offsets[1:], strict=False))
+    per_layer = tuple(labels[a:b].astype(np.int32) for a, b in pairwise(offsets))
     return per_layer, labels[pieces:].astype(np.int32), number
 
 
 def _components(edges: NDArray[np.int64], nodes: int) -> tuple[int, NDArray[np.int32]]:
+    if len(edges) == 0:
+        return nodes, np.arange(nodes, dtype=np.int32)
     graph = coo_array((np.ones(len(edges), bool), (edges[:, 0], edges[:, 1])), shape=(nodes, nodes))
     number, labels = connected_components(graph, directed=False)
     return int(number), labels
@@ -48,6 +50,8 @@ def touching(layer: LayerCopper) -> NDArray[np.int64]:
     sure = np.column_stack([ra[near], rb[near]])
     _, labels = _components(sure, len(shape))
     a, b = a[~round_pair], b[~round_pair]
+    apart = labels[a] != labels[b]
+    a, b = a[apart], b[apart]
     size = shapely.get_num_coordinates(shape)
     order = np.argsort(-np.maximum(size[a], size[b]), kind="stable")  # big shapes first: what they join needs no second look
     a, b = a[order], b[order]

@@ -15,7 +15,7 @@ from impcheck.checks.stubs import stub_lengths
 from impcheck.copper.copper import Copper
 from impcheck.errors import Remark
 from impcheck.fields.profile import NetProfile
-from impcheck.fields.profiles import Stretch, stretches
+from impcheck.fields.stretches import Stretch, stretches
 from impcheck.nets.nets import Nets
 from impcheck.path.walk import Run, Zone
 from impcheck.report.document import BoardPart, Document, FindingPart, NetPart, Range, RemarkPart, StretchPart, Summary, ViaPart

@@ -1,4 +1,5 @@
 """Which file is which: content, attributes, job file, names. Names are habits of layout tools (common practice)."""
+# ruff: noqa: E501  the tables below hold whole messages and whole lines of files
 
 from __future__ import annotations
 
@@ -111,6 +112,7 @@ def test_span_by_name():
     assert span_in("eel-front-in1.drl", 4) == (1, 2)
     assert span_in("eel-in1-in2.drl", 4) == (2, 3)
     assert span_in("eel-in2-back.drl", 4) == (3, 4)
+    assert span_in("eel-via-1-2.drl", 4) == (1, 2)
     for name in ("eel-pth.drl", "eel-2024-11.drl", "eel-1-2.drl", "eel-L3-L9.drl"):
         assert span_in(name, 4) is None
 
