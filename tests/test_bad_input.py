@@ -51,7 +51,7 @@ SPOILT_FILES = {
     "undefined aperture": ({"top_gbr": TOP.replace("D11*", "D12*", 1).replace("ADD12", "ADD11")}, "top.gbr"),
     "two files claim one layer": ({"bottom_gbr": BOTTOM.replace("L2,Bot", "L1,Top")}, "L1"),
     "step and repeat of a billion": ({"top_gbr": TOP.replace("%TO.N,CLK*%", "%SRX100000Y10000I1J1*%\n%TO.N,CLK*%")}, "top.gbr"),
-    "undefined tool": ({"pth_drl": DRILL.replace("\nT1\n", "\nT2\n")}, "pth.drl:6"),
+    "undefined tool": ({"pth_drl": DRILL.replace("\nT1\n", "\nT2\n")}, "pth.drl:7"),
 }
 
 
