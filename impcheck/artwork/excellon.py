@@ -17,22 +17,22 @@ _DEFAULTS = Limits()
 _LOOKS = re.compile(
     r"(?m)^\s*(?:N\d+\s*)?(?:M48\b|T\d+\s*(?:[A-Z]\s*[\d.]|$)|(?:G\d+\s*)*[XY]\s*[+-]?[\d.]+\s*(?:[A-Z]\s*[-+\d.]|$))", re.IGNORECASE
 )
-_GERBER = re.compile(r"%\s*(?:FS[LTD][AI]|MO(?:IN|MM)|ADD\d)|^G04[ A-Z]", re.MULTILINE)
+_GERBER = re.compile(r"%\s*(?:FS[LTD][AI]|MO(?:IN|MM)|ADD\d)|^G04[^\r\n]*\*", re.MULTILINE)
 
 
 def read_excellon(data: bytes, file: str, limits: Limits = _DEFAULTS, extent: Extent | None = None) -> DrillFile:
     """Reads a drill or route file: holes, slots (G85 and routed), repeats, tools, plating and X2 attributes in comments.
 
-    extent: min x, min y, max x, max y in mm of the board. It settles unit, digits and zeros where the file does not state them: the reading
-    is taken under which the holes lie on the board; without it the usual one. Either way a remark says so. Raises InputError with the line of
-    each mistake (at most 20): a hole without a tool or diameter, an unknown or unreadable command, a limit, a file that is cut short.
+    extent: min x, min y, max x, max y in mm of the board. It settles unit, digits and zeros where the file does not state them: the
+    reading is taken under which the holes lie on the board; without it the usual one. Either way a remark says so. Raises InputError with
+    the line of each mistake (at most 20): a hole without a tool or diameter, an unknown or unreadable command, a limit, a file cut short.
     """
     lines, whole = _lines(data, file, limits)
     form, remarks = settle_format(lines, file, extent)
     chosen = any(re.match(r"\s*T\d", line) for line in lines)
     program = Program(file, limits, form, noted_tools(lines, form.unit), chosen)
     program.run(lines)
-    holes = np.frombuffer(program.geometry, dtype=np.float64).reshape(-1, 5)
+    holes = np.frombuffer(program.holes.geometry, dtype=np.float64).reshape(-1, 5)
     problems = program.problems
     if problems and not len(holes) and not any(re.match(r"\s*(M48|%)", line) for line in lines):
         problems = [Problem(file, problems[0].line, f"this is no drill file: {problems[0].message}", "name an Excellon or XNC file")]
@@ -40,7 +40,7 @@ def read_excellon(data: bytes, file: str, limits: Limits = _DEFAULTS, extent: Ex
         problems = [Problem(file, len(lines), "the file ends in the middle, without M30", "export or copy the drill file again")]
     elif not problems and program.in_header:
         problems = [Problem(file, len(lines), "the file ends in its header", "export or copy the drill file again")]
-    info = np.frombuffer(program.info, dtype=np.intc).astype(np.int32).reshape(-1, 4)
+    info = np.frombuffer(program.holes.info, dtype=np.intc).astype(np.int32).reshape(-1, 4)
     far = np.flatnonzero(~(np.abs(holes[:, :4]).max(axis=1, initial=0.0) <= FARTHEST))
     if len(far):
         x, y = holes[far[0], 2:4]

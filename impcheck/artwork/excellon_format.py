@@ -1,7 +1,7 @@
 """How the numbers of a drill file are meant. In: its lines and the board's extent (mm); out: a Format that turns number texts into mm.
 
-LZ means that leading zeros are kept (trailing ones may be left out), TZ the opposite. Statements are taken from commands (METRIC, INCH, M71,
-M72), then from the comments layout tools write; what neither says is inferred from where the holes would lie on the board.
+LZ means that leading zeros are kept (trailing ones may be left out), TZ the opposite. Statements are taken from commands (METRIC, INCH,
+M71, M72), then from the comments layout tools write; what neither says is inferred from where the holes would lie on the board.
 """
 
 from __future__ import annotations
@@ -26,10 +26,11 @@ _TOOLS = {1.0: (0.1, 6.5), _INCH: (0.004, 0.26)}  # drill diameters a board has,
 _MARGIN, _MARGIN_SHARE = 2.0, 0.05  # how far tooling holes may lie outside, mm and share of the board's size
 
 _HEADER = re.compile(r"\s*(METRIC|INCH)\b((?:\s*,\s*[\w.]+)*)\s*(?:;.*)?$", re.IGNORECASE)
-_CODE = re.compile(r"(?<![A-Z0-9,])(?:M7([12])|G7([01]))(?!\d)", re.IGNORECASE)
+_CODE = re.compile(r"(?<![A-Z,])(?:M7([12])|G7([01]))(?!\d)", re.IGNORECASE)
 _DIGITS = re.compile(r"FORMAT\s*[:=]?\s*\{?\s*(\d)\s*[:.]\s*(\d)", re.IGNORECASE)
 _COORDINATE = re.compile(r"([XY])\s*([+-]?)\s*(\d+(?:\.\d*)?|\.\d+)")
 _ASIDE = re.compile(r"R|G93|M0?2|M97|M98|M47|G0?4")  # lines whose numbers are no places
+_KEPT = re.compile(r"[XY]\s*[+-]?(0\d*[1-9]\d*)(?![\d.])", re.IGNORECASE), re.compile(r"[XY]\s*[+-]?(\d*[1-9]\d*0)(?![\d.])", re.IGNORECASE)
 _TOOL = re.compile(r"^\s*T\d+[^C;\n]*C\s*([\d.]+)", re.IGNORECASE)
 _INCREMENTAL = re.compile(r"G91|ICI(?:,ON)?\s*$")
 
@@ -101,12 +102,16 @@ def settle_format(lines: Sequence[str], file: str, extent: Extent | None) -> tup
         what for what, value in (("unit", units), ("digits", digits), ("zeros", zeros)) if value is None and (what == "unit" or not dotted)
     ]
     tools = np.array([float(match[1]) for line in lines if (match := _TOOL.match(line)) and match[1].count(".") == 1 and len(match[1]) > 1])
-    scores = [_score(candidate, places, tools, extent) - 0.001 * order for order, candidate in enumerate(candidates)]
+    kept = None if zeros is not None or dotted else _zeros_kept(lines)
+    scores = [
+        _score(candidate, places, tools, extent) + 4.0 * (candidate.leading == kept) - 0.001 * order
+        for order, candidate in enumerate(candidates)
+    ]
     best = int(np.argmax(scores))
     found = candidates[best]
     spans = {_span(candidate, places) for candidate in candidates}
     if open_ and (len(spans) > 1 or units is None) and any(len(column) for column in places):
-        lack = " and ".join(open_)
+        lack = " and ".join([*filter(None, [", ".join(open_[:-1])]), open_[-1]])
         why = "as is usual" if extent is None else "because then its holes lie on the board"
         taken = f"{_NAMES[found.unit]}" if dotted else str(found)
         remarks.append(Remark(RemarkKind.GUESS, f"the drill file does not state its {lack}; read as {taken}, {why}", file))
@@ -140,7 +145,7 @@ def _statements(lines: Sequence[str]) -> tuple[_Said, _Said, _Said]:
 
 
 def _in_comment(comment: str, number: int, units: _Said, zeros: _Said) -> None:
-    """Unit and zeros in a comment like `FORMAT={3:3/ absolute / metric / suppress leading zeros}` or `Format : 3.3 / Absolute / MM / Leading`."""
+    """Unit and zeros in a comment like `FORMAT={3:3/ absolute / metric / keep zeros}` or `Format : 3.3 / Absolute / MM / Leading`."""
     if re.search(r"\b(metric|mm|millimet\w+)\b", comment):
         units.comments.append((1.0, number))
     elif re.search(r"\b(inch|inches|imperial|english)\b", comment):
@@ -185,6 +190,13 @@ def _places(lines: Sequence[str]) -> tuple[_Column, _Column]:
             count[axis].append(min(len(digits), 30))
     x, y = (_Column(np.array(dotted[axis]), np.array(value[axis]), np.array(count[axis]), incremental) for axis in "XY")
     return x, y
+
+
+def _zeros_kept(lines: Sequence[str]) -> bool | None:
+    """Which zeros the numbers themselves show to be kept: True leading ones, False trailing ones, None both or neither."""
+    text = "\n".join(line.partition(";")[0] for line in lines if line and not _ASIDE.match(line))
+    leading, trailing = (pattern.search(text) is not None for pattern in _KEPT)
+    return leading if leading != trailing else None
 
 
 def _span(form: Format, places: tuple[_Column, _Column]) -> tuple[float, ...]:

@@ -1,4 +1,4 @@
-"""What the comments of a drill file say: plating, tool diameters, X2 attributes. In: comment text; out: values the program asks for, in mm."""
+"""What the comments of a drill file say. In: comment text; out: plating, tool diameters in mm, nets and pins of X2 attributes."""
 
 from __future__ import annotations
 
@@ -16,7 +16,7 @@ _HOLESIZE = re.compile(
     + r"?(?:.*?\b(NON[-_ ]?PLATED|PLATED)\b)?(?:\s*(MILS?|MM|INCH(?:ES)?)\b)?",
     re.IGNORECASE,
 )
-_TOOL = re.compile(r"(?:TOOL\s*|T)(\d+)\s*(?:([=:])\s*|\s)(?:D(?:IA\w*)?\s*[=:]?\s*)?(\d*\.?\d+)\s*" + _UNIT + r"?(?![\w.])", re.IGNORECASE)
+_TOOL = re.compile(r"(?:TOOL\s*|T)(\d+)(?!\d)\s*(?:D(?:IA\w*)?)?\s*([=:])?\s*(\d*\.?\d+)\s*" + _UNIT + r"?(?![\w.])", re.IGNORECASE)
 _TYPE = re.compile(r"TYPE\s*=\s*(NON[-_ ]?PLATED|PLATED)", re.IGNORECASE)
 _PLATED = re.compile(r"\bPLATED\s*[=:]\s*(YES|TRUE|1|NO|FALSE|0)\b", re.IGNORECASE)
 _CONTENTS = re.compile(r"CONTENTS\s*:.*?\b(NON[-_ ]?PLATED|PLATED)\b", re.IGNORECASE)

@@ -6,15 +6,15 @@ Written from the Excellon CNC-7 command set and the XNC Format Specification (Uc
 from __future__ import annotations
 
 import re
-from array import array
 from collections.abc import Callable, Sequence
 
 from impcheck.artwork.excellon_format import Format
-from impcheck.artwork.excellon_notes import Notes, NotedTool
+from impcheck.artwork.excellon_holes import Holes
+from impcheck.artwork.excellon_notes import NotedTool, Notes
 from impcheck.artwork.excellon_route import Route
 from impcheck.artwork.excellon_tools import Tools
 from impcheck.artwork.limits import Limits
-from impcheck.errors import InputError, Problem, Remark, RemarkKind
+from impcheck.errors import Problem, Remark, RemarkKind
 
 FARTHEST = 5_000.0  # mm; no board reaches farther out
 MOST_PROBLEMS = 20
@@ -22,27 +22,34 @@ _NUMBER = r"[+-]?(?:\d+\.?\d*|\.\d+)"
 _HIT = re.compile(rf"\s*(?:X({_NUMBER}))?(?:Y({_NUMBER}))?\s*")
 _WORD = re.compile(rf"([A-Z])({_NUMBER})")
 _SETTING = re.compile(
-    r"(?:INCH|METRIC|FMAT|ICI|VER|ATC|AFS|BLKD|CCW|CP|DETECT|DN|DTMDIST|EXDA|FSB|HPCK|LCOR|NCSL|OM48|OSTOP|OTCLMP|PCKPARA?M|PF|PLTOFF|RSB|R,|SBK"
-    r"|SG|SIXM|T,|TCST|UP|ZA|ZC|ZS|P,|[ZSFB][+-]?[\d.]+$|M4[57](?!\d)|\$)"
+    r"(?:INCH|METRIC|FMAT|ICI|VER|ATC|AFS|BLKD|CCW|CP|DETECT|DN|DTMDIST|EXDA|FSB|HPCK|LCOR|NCSL|OM48|OSTOP|OTCLMP|PCKPARA?M|PF|PLTOFF|RSB|R,"
+    r"|SBK|SG|SIXM|T,|TCST|UP|ZA|ZC|ZS|P,|[ZSFB][+-]?[\d.]+$|M4[57](?!\d)|\$)"
 )
 _UNREAD = {
-    "G32": "a routed circle cycle", "G33": "a routed circle cycle", "G82": "a dual in-line cycle", "G83": "an eight-pin cycle",
-    "G84": "a circle cycle", "M70": "a repeat with swapped axes", "M80": "a mirrored repeat", "M90": "a mirrored repeat", "M99": "a subroutine",
-}  # fmt: skip
+    "G32": "a routed circle cycle",
+    "G33": "a routed circle cycle",
+    "G82": "a dual in-line cycle",
+    "G83": "an eight-pin cycle",
+    "G84": "a circle cycle",
+    "M70": "a repeat with swapped axes",
+    "M80": "a mirrored repeat",
+    "M90": "a mirrored repeat",
+    "M99": "a subroutine",
+}
 # Stops, tips and lights of the machine, feeds, and words whose effect is told elsewhere (M71, M72, G70, G71 in the Format).
-_NO_EFFECT = {"M06", "M09", "M18", "M21", "M22", "M47", "M60", "M71", "M72", "M14", "G07", "G70", "G71", "G80"}
+_NO_EFFECT = {"M06", "M09", "M18", "M21", "M22", "M47", "M60", "M71", "M72", "G07", "G70", "G71", "G80"}
 
 
 class Program:
     """The machine while it works through one file. Each hole is five numbers (start, end, diameter) and four integers."""
 
-    def __init__(self, file: str, limits: Limits, form: Format, noted: dict[int, NotedTool], number_of_tools: bool) -> None:
-        self.file, self.limits = file, limits
+    def __init__(self, file: str, limits: Limits, form: Format, noted: dict[int, NotedTool], selects: bool) -> None:
+        self.file = file
         self.number: Callable[[str], float] = form.reader()
         self.notes = Notes()
         self.tools = Tools(noted, form.unit, self.number)
         self.route = Route(self._add, self._remark)
-        self.geometry, self.info = array("d"), array("i")  # (x0, y0, x1, y1, diameter) and (line, plated, net, pin) of each hole
+        self.holes = Holes(file, limits)
         self.problems: list[Problem] = []
         self._remarks: dict[tuple[RemarkKind, str], list[int]] = {}
         self.x = self.y = 0.0
@@ -51,11 +58,7 @@ class Program:
         self.named: int | None = None  # the tool last named in the header
         self.diameter: float | None = None
         self.plated = -1
-        self.body = False  # past the header: ;TYPE= now speaks of holes, not of tools
-        self.counted = bool(noted) and not number_of_tools  # no T words: M00 changes to the next tool of the table
-        self.first: int | None = None  # first hole of the pattern being recorded
-        self.pattern: tuple[int, int] | None = None
-        self.moved = (0.0, 0.0, 0)  # offset of the last repeat of the pattern, and how many there were
+        self.counted = bool(noted) and not selects  # no T words: M00 changes to the next tool of the table
         self.blamed: set[object] = set()
         self.last_line = 0
 
@@ -64,7 +67,7 @@ class Program:
         if self.counted:
             self._select(min(self.tools.noted), 0)
         hit, number_of = _HIT.fullmatch, self.number
-        geometry, info, most = self.geometry, self.info, self.limits.objects * 4
+        geometry, info, most = self.holes.geometry, self.holes.info, 4 * self.holes.most
         for number, raw in enumerate(lines, 1):
             if self._plain() and (match := hit(raw)) and (match[1] or match[2]):
                 x, y = match.groups()
@@ -80,10 +83,10 @@ class Program:
                 info.extend((number, self.plated, self.notes.net, self.notes.pin))
                 self.last_line = number
                 if len(info) > most:
-                    raise self._too_many(number)
+                    raise self.holes.too_many(number)
                 continue
             self._line(raw, number)
-            if len(self.problems) >= MOST_PROBLEMS or self.ended is None:
+            if len(self.problems) >= MOST_PROBLEMS:
                 break
         self.route.lift(self.x, self.y, self.last_line)
 
@@ -106,10 +109,6 @@ class Program:
 
     def _remark(self, text: str, line: int, kind: RemarkKind = RemarkKind.ODD) -> None:
         self._remarks.setdefault((kind, text), []).append(line)
-
-    def _too_many(self, line: int) -> InputError:
-        said = f"the file drills more than {self.limits.objects:,} holes"
-        return InputError(Problem(self.file, line, said, f"limit objects = {self.limits.objects:,}"))
 
     def _line(self, raw: str, number: int) -> None:
         text, semicolon, comment = raw.partition(";")
@@ -136,7 +135,7 @@ class Program:
             return
         if text in ("%", "M95"):
             if self.in_header:
-                self.in_header, self.body = False, True
+                self.in_header = False
                 self.notes.type = -1
         elif text == "M48":
             self.in_header = True
@@ -169,10 +168,14 @@ class Program:
         size: str | None = None
         step = False
         for index, (letter, value) in enumerate(words):
+            if letter in "TGMR" and not value.isdigit():
+                said = f"{letter}{value[:24]} is no code; a whole number stands behind {letter}"
+                self._problem(number, said, "export the drill file again, as Excellon or XNC")
+                return
             if letter in "XYIJA":
                 if self.in_header and letter in "XY":
                     self._remark("the header does not end with %; the first coordinate ends it", number)
-                    self.in_header, self.body = False, True
+                    self.in_header = False
                     if self.named is not None:
                         self._select(self.named, number)
                 if letter in place:
@@ -187,7 +190,7 @@ class Program:
                     self._problem(number, said, "state the format of the numbers, as in METRIC,TZ,000.000", "far")
                     return
             elif letter == "G":
-                code = f"G{int(float(value)):02d}"
+                code = f"G{int(value[:9]):02d}"
                 if code in ("G85", "G87"):
                     slot = self._target(place)
                     place = {}
@@ -199,23 +202,20 @@ class Program:
                 else:
                     self._preparatory(code, number)
             elif letter == "M":
-                code = f"M{int(float(value)):02d}"
+                code = f"M{int(value[:9]):02d}"
                 if code == "M02" and index + 1 < len(words):
                     step = True
                     continue
-                if place and code not in ("M30", "M00", "M02"):
+                if place:
                     self._go(place, slot, number)
                     place, slot = {}, None
-                elif place:
-                    self._go(place, slot, number)
-                    place = {}
                 self._auxiliary(code, number)
             elif letter == "T":
                 tool = self.tools.code(value, any(other == "C" for other, _ in words[index + 1 :]))
             elif letter == "C" and tool is not None:
                 size = value
             elif letter == "R":
-                repeat = int(float(value))
+                repeat = int(value[:18])
             elif letter not in "FSBHZ":
                 self._problem(number, f"the word {letter}{value[:24]} is not known", "export the drill file again, as Excellon or XNC")
                 return
@@ -254,7 +254,7 @@ class Program:
     def _settle_plating(self) -> None:
         """What the next holes are: by the comment in the body, else their tool, else the whole file (filled in at the end)."""
         tool = -1 if self.tool is None else self.tools.plated(self.tool)
-        self.plated = self.notes.type if self.body and self.notes.type >= 0 else tool
+        self.plated = self.notes.type if self.notes.type >= 0 and not self.in_header else tool  # in the header it speaks of the tools
         if self.plated < 0 and self.tool is not None:
             self.plated = self.notes.by_start(self.tool)
 
@@ -264,10 +264,7 @@ class Program:
         if self.diameter is None:
             self._blame_tool(number)
             return
-        self.geometry.extend((x0, y0, x1, y1, self.diameter))
-        self.info.extend((number, self.plated, self.notes.net, self.notes.pin))
-        if len(self.info) > self.limits.objects * 4:
-            raise self._too_many(number)
+        self.holes.add((x0, y0, x1, y1, self.diameter), (number, self.plated, self.notes.net, self.notes.pin))
 
     def _blame_tool(self, number: int) -> None:
         if self.tool is None:
@@ -322,8 +319,8 @@ class Program:
             self._unread(code, number)
 
     def _auxiliary(self, code: str, number: int) -> None:
-        if code == "M15":
-            self.route.plunge(self.x, self.y)
+        if code in ("M14", "M15"):
+            self.route.plunge()
         elif code in ("M16", "M17"):
             self.route.lift(self.x, self.y, number)
         elif code == "M00" and self.counted:
@@ -333,15 +330,16 @@ class Program:
         elif code == "M00":
             self.route.end(self.x, self.y, number)
         elif code in ("M30", "M02"):
-            if code == "M30" or self.pattern is None:
+            if code == "M30" or self.holes.pattern is None:
                 self.ended = True
+                if code == "M02":
+                    self._remark("the program ends with M02, which is read like M30", number)
         elif code == "M25":
-            self.first, self.pattern = self._count(), None
+            self.holes.begin()
         elif code == "M01":
-            if self.first is not None:
-                self.pattern, self.moved, self.first = (self.first, self._count()), (0.0, 0.0, 0), None
+            self.holes.finish()
         elif code == "M08":
-            self.pattern = None
+            self.holes.pattern = None
         elif code not in _NO_EFFECT:
             self._unread(code, number)
 
@@ -352,47 +350,21 @@ class Program:
 
     # repeats
 
-    def _count(self) -> int:
-        return len(self.info) // 4
-
-    def _copy(self, first: int, last: int, x: float, y: float, number: int) -> None:
-        """Holes first..last-1 once more, moved."""
-        for hole in range(first, last):
-            x0, y0, x1, y1, diameter = self.geometry[5 * hole : 5 * hole + 5]
-            self.geometry.extend((x0 + x, y0 + y, x1 + x, y1 + y, diameter))
-            self.info.extend((number, *self.info[4 * hole + 1 : 4 * hole + 4]))
-
     def _repeat(self, place: dict[str, float], times: int, number: int) -> None:
-        """R3X2Y0: the last hole or slot three times more, each a step farther."""
         x, y = place.get("X", 0.0), place.get("Y", 0.0)
-        last = self._count()
-        if not last or self.diameter is None:
-            if self.diameter is None:
-                self._blame_tool(number)
-            else:
-                self._problem(number, "a repeat (R) follows no hole", "write the hole before it")
-            return
-        if last + times > self.limits.objects:
-            raise self._too_many(number)
-        for time in range(1, times + 1):
-            self._copy(last - 1, last, time * x, time * y, number)
-        self.x, self.y = self.x + times * x, self.y + times * y
+        if self.diameter is None:
+            self._blame_tool(number)
+        elif not len(self.holes):
+            self._problem(number, "a repeat (R) follows no hole", "write the hole before it")
+        else:
+            self.holes.repeat(times, x, y, number)
+            self.x, self.y = self.x + times * x, self.y + times * y
 
     def _step(self, place: dict[str, float], times: int, number: int) -> None:
-        """M02X10: the pattern between M25 and M01 once more, each copy counted from the one before."""
-        if self.pattern is None:
-            if self.problems:
-                return
+        if self.holes.pattern is None:
             self._problem(number, "a repeat (M02) follows no pattern", "a pattern stands between M25 and M01")
             return
-        first, last = self.pattern
-        if self._count() + times * (last - first) > self.limits.objects or times > self.limits.objects:
-            raise self._too_many(number)
-        x, y, before = self.moved
-        for _ in range(times if last > first else 0):
-            x, y = x + place.get("X", 0.0), y + place.get("Y", 0.0)
-            self._copy(first, last, x, y, number)
-        self.moved = (x, y, before + 1)
-        if before:
+        self.holes.step(times, place.get("X", 0.0), place.get("Y", 0.0), number)
+        if self.holes.steps > 1:
             said = "several repeats of one pattern (M02): each offset is counted from the copy before it"
             self._remark(said, number, RemarkKind.GUESS)

@@ -37,9 +37,8 @@ class Route:
         self.lift(x, y, line)
         self.on = self.raised = False
 
-    def plunge(self, x: float, y: float) -> None:
-        """M15."""
-        del x, y
+    def plunge(self) -> None:
+        """M15, and M14 (at a set depth)."""
         self.on = self.down = self.used = True
         self.raised = self.cut = False
         if self.motion == 0:

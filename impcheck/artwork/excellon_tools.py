@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 
-from impcheck.artwork.excellon_notes import Notes, NotedTool
+from impcheck.artwork.excellon_notes import NotedTool, Notes
 
 _LARGEST = 50.0  # mm; a diameter without a point that would be larger is written in the digits of the coordinates
 

@@ -1,8 +1,8 @@
 """IPC-D-356 and IPC-D-356A netlists. In: bytes; out: NetlistPoints in mm, with the line of each record.
 
 Columns of a test record, counted from 1 (IPC-D-356A, from memory): 1-3 operation code, 4-17 net, 21-26 part, 27 hyphen, 28-31 pin, 32
-midpoint flag M, 33-38 hole (D, four digits, P or U), 39-41 access (A, two digits), 42-57 place (X and Y, sign, six digits), 58-67 size (X
-and Y, four digits), 68-71 rotation (R), 73-74 solder mask (S), and of blind and buried vias the two layers they join (L, two digits) behind.
+midpoint flag M, 33-38 hole (D, four digits, P or U), 39-41 access (A, two digits), 42-57 place (X and Y, sign, six digits), 58-67 size
+(X and Y, four digits), 68-71 rotation (R), 73-74 solder mask (S), and of blind and buried vias the two layers they join (L, two digits).
 """
 
 from __future__ import annotations

@@ -70,9 +70,7 @@ def stackup_of(items: tuple[JobItem, ...]) -> tuple[Stackup | None, tuple[str, .
     missing: list[str] = []
     coppers = [index for index, item in enumerate(items) if item.kind == "copper"]
     if len(coppers) < 2:
-        return None, (
-            f"the stackup lists {len(coppers)} copper layer{'' if len(coppers) == 1 else 's'}; a board with a reference plane has at least 2",
-        )
+        return None, (f"the stackup lists {len(coppers)} of the 2 copper layers that a trace and its reference need at least",)
     top, bottom = coppers[0], coppers[-1]
     found: list[Mask | CopperItem | Dielectric] = []
     number = 0

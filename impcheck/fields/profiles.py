@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from concurrent.futures import ProcessPoolExecutor
-from dataclasses import dataclass
 
 import numpy as np
 import shapely
@@ -14,7 +13,7 @@ from impcheck.artwork.image import Bools, Floats
 from impcheck.artwork.stackup import Stackup
 from impcheck.copper.copper import Copper
 from impcheck.errors import Remark, RemarkKind
-from impcheck.fields.cross_section import Edges, Shape, section_of, shape_of
+from impcheck.fields.cross_section import Edges, Place, Shape, place_of, section_of
 from impcheck.fields.line import SPEED
 from impcheck.fields.profile import NetProfile, RunProfile
 from impcheck.fields.section import SectionError
@@ -24,13 +23,6 @@ from impcheck.path.walk import Intervals, Run, Walk, Zone
 
 GRAIN = 0.002  # mm: stations whose cuts agree to this are one before anything is computed
 Solved = tuple[float, float, float]  # impedance in ohm, effective permittivity, estimated relative error
-
-
-@dataclass
-class _Counts:
-    stations: int = 0
-    unsolved: int = 0
-    lonely: int = 0
 
 
 def profile_nets(
@@ -43,21 +35,20 @@ def profile_nets(
     """
     returns = np.zeros(nets.count, bool)
     returns[sorted(nets.returns)] = True
-    shapes: dict[Shape, int] = {}
+    places: dict[Place, int] = {}
     rows: list[list[NDArray[np.int64]]] = []
     for walk in walks:
         own = np.zeros(nets.count, bool)
         own[list(walk.net.labels)] = True
-        rows.append([_shapes_of_run(run, stackup, copper, returns, own, shapes) for run in walk.runs])
-    solved = _solve_all(list(shapes), stackup, jobs)
-    table = np.array([*solved, (np.nan, np.nan, np.nan)])
+        rows.append([_places_of_run(run, stackup, copper, returns, own, places) for run in walk.runs])
+    table = np.array([*_solve_places(list(places), stackup, jobs), (np.nan, np.nan, np.nan)])
     profiles = []
     lost = 0
     for walk, runs in zip(walks, rows, strict=True):
         found = []
-        for index in runs:
+        for run, index in zip(walk.runs, runs, strict=True):
             z0, eps, error = table[index].T
-            lost += int(np.isnan(z0).sum())
+            lost += int((np.isnan(z0) & (run.stations.zone != Zone.VIA)).sum())
             found.append(RunProfile(z0, eps, np.sqrt(eps) / SPEED, error))
         profiles.append(NetProfile(walk, tuple(found)))
     remarks = []
@@ -68,8 +59,8 @@ def profile_nets(
     return tuple(profiles), tuple(remarks)
 
 
-def _shapes_of_run(run: Run, stackup: Stackup, copper: Copper, returns: Bools, own: Bools, shapes: dict[Shape, int]) -> NDArray[np.int64]:
-    """(n,) index into `shapes` of each station, -1 where there is no section."""
+def _places_of_run(run: Run, stackup: Stackup, copper: Copper, returns: Bools, own: Bools, places: dict[Place, int]) -> NDArray[np.int64]:
+    """(n,) index into `places` of each station, -1 where there is no section: in vias, and where there is nothing to return on."""
     stations = run.stations
     fine = np.isin(stations.zone, (Zone.TRACE, Zone.BEND))
     coated = _coated(run, stackup, copper)
@@ -79,7 +70,7 @@ def _shapes_of_run(run: Run, stackup: Stackup, copper: Copper, returns: Bools, o
     known: dict[tuple[object, ...], int] = {}
     above = [layer for layer in range(run.layer - 1, -1, -1) if layer in cuts]
     below = [layer for layer in range(run.layer + 1, len(stackup.coppers)) if layer in cuts]
-    for i in range(len(stations)):
+    for i in np.flatnonzero(stations.zone != Zone.VIA).tolist():
         key = (width[i], fine[i], coated[i], *(cut.key(i) for cut in cuts.values()))
         index = known.get(key)
         if index is None:
@@ -87,9 +78,10 @@ def _shapes_of_run(run: Run, stackup: Stackup, copper: Copper, returns: Bools, o
             beside = tuple((a, b) for a, b in cuts[run.layer].edges(i) if a > half - 1e-3 or b < -half + 1e-3)
             upper = [(layer, cuts[layer].edges(i)) for layer in above]
             lower = [(layer, cuts[layer].edges(i)) for layer in below]
-            shape = shape_of(run.layer, float(stations.width[i]), beside, upper, lower, stackup, bool(coated[i]), bool(fine[i]))
-            nothing = shape.closed_above < 0 and shape.closed_below < 0 and not shape.planes and not shape.beside
-            index = -1 if nothing else shapes.setdefault(shape, len(shapes))
+            place = place_of(run.layer, float(stations.width[i]), beside, upper, lower, stackup, bool(coated[i]), bool(fine[i]))
+            main = place.main
+            nothing = main.closed_above < 0 and main.closed_below < 0 and not main.planes and not main.beside
+            index = -1 if nothing else places.setdefault(place, len(places))
             known[key] = index
         found[i] = index
     return found
@@ -140,6 +132,22 @@ def _coated(run: Run, stackup: Stackup, copper: Copper) -> Bools:
         which, _ = shapely.STRtree(openings).query(shapely.points(run.stations.at), predicate="within")
         covered[which] = False
     return covered
+
+
+def _solve_places(places: list[Place], stackup: Stackup, jobs: int) -> list[Solved]:
+    shapes = {shape: None for place in places for shape in ((place.main, place.base, *(part for part, _ in place.beside)) if place.beside else (place.main,))}
+    solved = dict(zip(shapes, _solve_all(list(shapes), stackup, jobs), strict=True))
+    found = []
+    for place in places:
+        z0, eps, error = solved[place.main]
+        if place.beside:
+            z_base, eps_base, _ = solved[place.base]
+            for part, power in place.beside:
+                z0 *= (solved[part][0] / z_base) ** power
+                eps *= (solved[part][1] / eps_base) ** power
+                error = max(error, solved[part][2])
+        found.append((z0, eps, error))
+    return found
 
 
 def _solve_all(shapes: list[Shape], stackup: Stackup, jobs: int) -> list[Solved]:

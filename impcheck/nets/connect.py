@@ -25,11 +25,11 @@ def connect(artwork: Artwork, copper: Copper) -> Nets:
     names = evidence.names()
     problems = Problems()
     declared = Declarer(artwork, finder, names, evidence.pins, problems).all()
-    own = {label for net in declared for label in net.labels}
+    called = {net.name for net in declared}
+    own = {label for net in declared for label in net.labels if set(names.get(label, ())) <= called}  # a plane shorted to a net stays a plane
     remarks = list(evidence.remarks)
     if artwork.board.returns:
         returns, shown = named_returns(artwork.board, names, problems)
-        returns -= own
     else:
         returns = returns_by_area(copper, piece_label) - own
         shown = tuple(sorted({names[label][0] if label in names else "unnamed copper" for label in returns}))

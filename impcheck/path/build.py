@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from impcheck.artwork.parts import Artwork
@@ -17,7 +19,12 @@ MIN_LEG = 1e-4  # mm
 
 
 def walk_nets(artwork: Artwork, copper: Copper, nets: Nets) -> tuple[Walk, ...]:
-    """One walk for each of `nets.declared`, in the same order."""
+    """One walk for each of `nets.declared`, in the same order. A net that is one piece with a return net has no path of its own."""
+    shorted = [set(net.labels) & nets.returns for net in nets.declared]
+    if any(shorted):
+        rest = tuple(net for net, found in zip(nets.declared, shorted, strict=True) if not found)
+        walks = iter(walk_nets(artwork, copper, replace(nets, declared=rest)))
+        return tuple(_shorted(net, nets, min(found)) if found else next(walks) for net, found in zip(nets.declared, shorted, strict=True))
     if not nets.declared:
         return ()
     graph = build_graph(copper, nets)
@@ -53,6 +60,11 @@ def walk_nets(artwork: Artwork, copper: Copper, nets: Nets) -> tuple[Walk, ...]:
         first, last = spans[index]
         walks.append(_walk(net, routes[index], legs[first:last], stations[first:last], branches[index]))
     return tuple(walks)
+
+
+def _shorted(net: DeclaredNet, nets: Nets, label: int) -> Walk:
+    other = next((name for name in nets.names.get(label, ()) if name != net.name), "a return net")
+    return Walk(net, "unresolved", f"its copper is one piece with {other}, a return net, so it has no path of its own", (), (), (), (), None, ())
 
 
 def _walk(net: DeclaredNet, route: Route, legs: list[Leg], stations: list[Stations], branches: list[Branch]) -> Walk:

@@ -17,7 +17,7 @@ SIGNALS = (0, 2, 4, 6, 9)
 LANES = 100
 PITCH = 0.76  # mm between lanes
 WIDTH = {0: 0.17, 2: 0.1, 4: 0.1, 6: 0.1, 9: 0.17}
-DRILL, PAD, ANTIPAD = 0.2, 0.4, 0.56
+DRILL, PAD, ANTIPAD = 0.15, 0.3, 0.56
 DIELECTRIC = (0.1, 0.1, 0.12, 0.12, 0.2, 0.12, 0.12, 0.1, 0.1)
 
 
@@ -114,7 +114,7 @@ def tile(big: Big, number: int, x0: float, y0: float, rng: random.Random) -> Non
         big.layers[out].named(net)
         big.layers[out].path(WIDTH[out], [(second, y), (b, y)])
         big.layers[inner].named(net)
-        jog, points, side = 0.12, [(first, y)], 1
+        jog, points, side = 0.04, [(first, y)], 1
         for k in range(1, 5):
             x = first + (second - first) * k / 5
             points += [(x, points[-1][1]), (x + jog, y + (jog if side > 0 else 0.0))]
