@@ -14,7 +14,7 @@ from impcheck.fields.section import Conductor, Section, SectionError
 Floats = NDArray[np.float64]
 GRID = 1e-7  # mm, coordinates nearer than this are one
 ASIDE = 2e-6  # mm, how far beside a segment it is asked what lies there
-FAR = 60.0  # heights of the section beyond its copper where open interfaces end
+FAR = 20.0  # heights of the section beyond its copper where open interfaces end
 AIR = 1.0
 
 

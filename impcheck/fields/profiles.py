@@ -22,6 +22,7 @@ from impcheck.nets.nets import Nets
 from impcheck.path.walk import Intervals, Run, Walk, Zone
 
 GRAIN = 0.002  # mm: stations whose cuts agree to this are one before anything is computed
+ACCURACY = 5e-3  # relative, of each section: a tenth of the narrowest tolerance boards are built to
 Solved = tuple[float, float, float]  # impedance in ohm, effective permittivity, estimated relative error
 
 
@@ -165,7 +166,7 @@ def _solve_chunk(shapes: list[Shape], stackup: Stackup) -> list[Solved]:
 
 def _solve(shape: Shape, stackup: Stackup) -> Solved:
     try:
-        line = solve(section_of(shape, stackup))
+        line = solve(section_of(shape, stackup), ACCURACY)
     except SectionError:
         return (float("nan"),) * 3
     return line.z0, line.eps_eff, line.error

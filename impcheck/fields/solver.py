@@ -21,7 +21,7 @@ from impcheck.fields.section import Section
 
 Floats = NDArray[np.float64]
 NODES = 3  # Gauss nodes a panel
-GRADINGS = (Grading(), Grading(0.25, 2.0, 0.9), Grading(0.15, 1.7, 0.6))  # from the first on until the accuracy asked for is met
+GRADINGS = (Grading(0.6, 4.0, 2.5), Grading(0.4, 2.5, 1.3), Grading(0.2, 1.8, 0.7))  # from the first on until the accuracy asked for is met
 
 
 def solve(section: Section, accuracy: float = 2e-3) -> Line:
