@@ -21,7 +21,7 @@ Layer = tuple[int, float, Edges]  # copper layer, its distance from the trace, i
 # what stands behind the opening changed it by less than 0.1 % unless the opening lies under the trace.
 MATTERS_BESIDE = 5.0  # copper beside the trace
 MATTERS_OPEN = 3.0  # an opening of the only plane near
-MATTERS_SHIELDED = 1.5  # an opening where a plane on the other side is whole
+MATTERS_SHIELDED = 1.5  # an opening where a plane on the other side is whole, or pours on both sides stand nearer than the plane
 MATTERS_EDGE = 2.0  # times farther where the opening has no far edge
 NEIGHBOURS = 2  # pieces of copper on either side that are kept: those farther out are shielded by them
 WIDTH_STEP = 0.002  # relative, of widths
@@ -31,6 +31,7 @@ DISTANCES = (0.0, 0.3, 0.75, 1.5, 2.5, 4.0, 6.0)  # heights from the trace's edg
 WIDTHS = (0.4, 1.2, 3.5, 25.0)  # heights, of those openings; the last one stands for the end of the plane
 LOG_WIDTHS = tuple(math.log(width) for width in WIDTHS)
 LEAST_POWER = 0.01
+FAR_BESIDE = 2.0  # times that, how far copper beside that goes on is drawn
 COARSE = 5.0  # times coarser where no rule judges
 FAR = 30.0  # heights beyond which a plane is drawn no farther
 
@@ -90,7 +91,10 @@ def place_of(
     half = width / 2
     sides = [[(index, _height(stackup, layer, index), edges) for index, edges in layers] for layers in (above, below)]
     nearest = [next(((index, away, edges) for index, away, edges in side if _touches(edges, half + MATTERS_OPEN * away)), None) for side in sides]
-    shielded = [other is not None and _closes(other[2], half + MATTERS_SHIELDED * other[1]) for other in nearest[::-1]]
+    height = min((found[1] for found in nearest if found is not None), default=1.0)
+    near = _beside(beside, half, MATTERS_BESIDE * height, height, GAP_STEP * factor)
+    pours = all(any(sign * (low + high) > 0 and min(abs(low), abs(high)) - half < height < high - low for low, high in near) for sign in (-1, 1))
+    shielded = [pours or other is not None and _closes(other[2], half + MATTERS_SHIELDED * other[1]) for other in nearest[::-1]]
     openings: list[list[Layer]] = []
     closed = [-1, -1]
     for side, layers in enumerate(sides):
@@ -108,8 +112,6 @@ def place_of(
                 closed[side] = index
                 break
             openings[side].append((index, away, found))
-    height = min((found[1] for found in nearest if found is not None), default=1.0)
-    near = _beside(beside, half, MATTERS_BESIDE * height, GAP_STEP * factor)
 
     def shape(above_open: list[Layer], below_open: list[Layer]) -> Shape:
         ends = [closed[side] if given or not openings[side] else openings[side][0][0] for side, given in enumerate((above_open, below_open))]
@@ -237,21 +239,23 @@ def _nodes(value: float, nodes: tuple[float, ...]) -> list[tuple[int, float]]:
     return [(above - 1, 1.0 - share), (above, share)]
 
 
-def _beside(edges: Edges, half: float, limit: float, step: float) -> Edges:
-    """The nearest copper on either side: gap and width snapped."""
+def _beside(edges: Edges, half: float, limit: float, height: float, step: float) -> Edges:
+    """The nearest copper on either side: gap and width snapped. What stands behind copper that is wide against the height is shielded by it."""
     found: list[tuple[float, float]] = []
+    far = half + FAR_BESIDE * limit
     right = sorted((low, high) for low, high in edges if low >= half - 1e-6)[:NEIGHBOURS]
-    left = sorted(((-high, -low) for low, high in edges if high <= -half + 1e-6))[:NEIGHBOURS]
+    left = sorted((-high, -low) for low, high in edges if high <= -half + 1e-6)[:NEIGHBOURS]
     for sign, side in ((1.0, right), (-1.0, left)):
         at = half
         for low, high in side:
             if low - half > limit:
                 break
-            gap = max(snapped(low - at, step, 0.001), 0.002)
-            wide = max(snapped(min(high, half + 3 * limit) - low, 4 * step, 0.005), 0.005)
-            a, b = at + gap, at + gap + wide
+            a = at + max(snapped(low - at, step, 0.001), 0.002)
+            b = far if high >= half + limit else a + max(snapped(high - low, 4 * step, 0.005), 0.005)
             found.append((a, b) if sign > 0 else (-b, -a))
             at = b
+            if b - a > height / 2:
+                break
     return tuple(sorted(found))
 
 
