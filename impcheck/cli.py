@@ -1,4 +1,5 @@
-"""The commands. In: what a user types; out: text on the terminal, files, and the exit status (0 nothing at the gate, 1 findings, 2 bad input)."""
+"""The commands. In: what a user types; out: text on the terminal, files, and the exit status (0 nothing at the gate, 1 findings, 2 bad
+input)."""
 
 from __future__ import annotations
 
@@ -29,8 +30,22 @@ def main() -> None:
 
 @main.command()
 @click.argument("boards", nargs=-1, required=True, metavar="BOARD...", type=click.Path(path_type=Path))
-@click.option("-o", "--output", "outputs", multiple=True, metavar="FILE", type=click.Path(path_type=Path), help="Write the result to FILE as well; the ending chooses the format (.json). May be given several times, with one BOARD.")
-@click.option("--fail-on", type=click.Choice(["error", "warning", "note", "never"]), default="warning", show_default=True, help="The lowest level of a finding that gives exit status 1.")
+@click.option(
+    "-o",
+    "--output",
+    "outputs",
+    multiple=True,
+    metavar="FILE",
+    type=click.Path(path_type=Path),
+    help="Write the result to FILE as well; the ending chooses the format (.json). May be given several times, with one BOARD.",
+)
+@click.option(
+    "--fail-on",
+    type=click.Choice(["error", "warning", "note", "never"]),
+    default="warning",
+    show_default=True,
+    help="The lowest level of a finding that gives exit status 1.",
+)
 @click.option("--jobs", type=click.IntRange(1, 256), default=1, show_default=True, metavar="N", help="Processes that solve cross-sections.")
 @click.option("--timing", is_flag=True, help="Say how long each step took.")
 def check(boards: tuple[Path, ...], outputs: tuple[Path, ...], fail_on: str, jobs: int, timing: bool) -> None:

@@ -38,9 +38,11 @@ class Problems:
         self.found: list[Problem] = []
 
     def add(self, file: str, line: int, message: str, remedy: str = "") -> None:
+        """Adds one problem; line 0 where a line means nothing."""
         self.found.append(Problem(file, line, message, remedy))
 
     def take(self, error: InputError) -> None:
+        """Adds the problems of an error that was raised."""
         self.found.extend(error.problems)
 
     def raise_if_any(self) -> None:

@@ -55,7 +55,11 @@ def board_file(path: Path) -> Path:
                 return path / name
         raise InputError(Problem(str(path), 0, "this folder holds no board.yaml", "write a board file that says `files:` and name it here"))
     if path.suffix.lower() == ".zip":
-        raise InputError(Problem(str(path), 0, "a board file is needed to know which nets to follow", f"write a board.yaml that says `files: {path.name}`"))
+        raise InputError(
+            Problem(
+                str(path), 0, "a board file is needed to know which nets to follow", f"write a board.yaml that says `files: {path.name}`"
+            )
+        )
     if not path.is_file():
         raise InputError(Problem(str(path), 0, "there is no such file", "name a board file (board.yaml)"))
     return path
@@ -98,7 +102,7 @@ def run(board: Path, *, jobs: int = 1, progress: Callable[[str], None] | None = 
 def check(board: str | Path, *, jobs: int = 1) -> Document:
     """Checks one board and returns its result document.
 
-    Parameters: `board`, the path of a board file or of a folder that holds a board.yaml; `jobs`, how many processes may solve cross-sections.
-    Raises impcheck.errors.InputError, with every problem found, where the input cannot be used.
+    Parameters: `board`, the path of a board file or of a folder that holds a board.yaml; `jobs`, how many processes may solve cross-
+    sections. Raises impcheck.errors.InputError, with every problem found, where the input cannot be used.
     """
     return run(Path(board), jobs=jobs).document

@@ -1,8 +1,9 @@
 """Draws the sample boards: python -m sample_boards.draw, from the project's root, with the test extras installed.
 
-Four invented boards of one invented maker, Sedgeholm Gauges, whose river-ice gauge listens for the ice from a mast: the antenna board on the mast, the
-logger, the sampler, and the clock board. Each is written as a user would have it: a commented board.yaml, the fabrication files, and beside them
-expected.yaml, which lists the defects that were drawn into it and why each is one. Shares no code with impcheck.
+Four invented boards of one invented maker, Sedgeholm Gauges, whose river-ice gauge listens for the ice from a mast: the antenna board
+on the mast, the logger, the sampler, and the clock board. Each is written as a user would have it: a commented board.yaml, the
+fabrication files, and beside them expected.yaml, which lists the defects that were drawn into it and why each is one. Shares no code
+with impcheck.
 """
 
 from __future__ import annotations
@@ -32,11 +33,18 @@ INNER = 0.19  # stripline between 0.2 and 0.25 mm
 
 
 def antenna() -> tuple[Board, list[Label]]:
-    """Two layers: the feed line from the antenna jack through a capacitor to the amplifier, and on to the cable jack, coplanar over ground."""
+    """Two layers: the feed line from the antenna jack through a capacitor to the amplifier, and on to the cable jack, coplanar over
+    ground."""
     board = Board(
         "Ice gauge antenna, revision D",
         box(0, 0, 44, 24),
-        (mask(), Layer("copper", 35, name="L1", etch=10), Layer("dielectric", 500, 4.3, 0.016, "core"), Layer("copper", 35, name="L2", etch=10), mask()),
+        (
+            mask(),
+            Layer("copper", 35, name="L1", etch=10),
+            Layer("dielectric", 500, 4.3, 0.016, "core"),
+            Layer("copper", 35, name="L2", etch=10),
+            mask(),
+        ),
     )
     y = 12.0
     coax(board, "J1", (4, y), 0, "RF_ANT")
@@ -55,7 +63,20 @@ def antenna() -> tuple[Board, list[Label]]:
     for x in (2.5, 6, 8, 12, 14, 18, 20, 22, 31.5, 37, 38.8, 41.5):
         for sign in (-1, 1):
             via(board, "GND", (x, y + sign * (1.5 if x in (2.5, 41.5) else 1.0)))
-    for at in ((24.4, 14.8), (24.4, 9.2), (29.6, 9.2), (35, 18), (35, 21), (20, 17.5), (8, 22), (30, 4), (14, 4), (40, 4), (4, 4), (40, 21)):
+    for at in (
+        (24.4, 14.8),
+        (24.4, 9.2),
+        (29.6, 9.2),
+        (35, 18),
+        (35, 21),
+        (20, 17.5),
+        (8, 22),
+        (30, 4),
+        (14, 4),
+        (40, 4),
+        (4, 4),
+        (40, 21),
+    ):
         via(board, "GND", at)
     board.holes += [Hole((2.2, 21.8), 2.2), Hole((41.8, 2.2), 2.2)]
     outline = box(0.3, 0.3, 43.7, 23.7)
@@ -72,7 +93,9 @@ def antenna() -> tuple[Board, list[Label]]:
     labels = [
         Label("neck-down", "RF_OUT", "L1", middle, why),
         Label("width", "RF_OUT", "L1", middle, why),
-        Label("impedance", "RF_OUT", "L1", (33.213, y), f"{why}: over 55 ohm, most so behind the step, where the pour has not closed in yet"),
+        Label(
+            "impedance", "RF_OUT", "L1", (33.213, y), f"{why}: over 55 ohm, most so behind the step, where the pour has not closed in yet"
+        ),
         Label("reference-gap", "RF_ANT", "L1", (9.5, y), "a slot for a cable tie cuts the ground under the line"),
         Label("impedance", "RF_ANT", "L1", (9.5, y), "over the slot only the pour beside the line is left to return on"),
     ]
@@ -103,9 +126,30 @@ def lane(number: int) -> float:
 
 
 def processor_and_converter(board: Board, nets: list[str], supply: str, other: str) -> None:
-    """U1 at the left, U2 at the right, ten pins facing each other; their outer pins alternate between supply and ground, each with a via."""
-    rows(board, "U1", (12, 25), 0, {11 + k: net for k, net in enumerate(nets)} | {k: supply if k % 2 else "GND" for k in range(1, 11)}, 20, 1.27, 6.0, (1.5, 0.5))
-    rows(board, "U2", (66, 25), 0, {10 - k: net for k, net in enumerate(nets)} | {k: other if k % 2 else "GND" for k in range(11, 21)}, 20, 1.27, 6.0, (1.5, 0.5))
+    """U1 at the left, U2 at the right, ten pins facing each other; their outer pins alternate between supply and ground, each with a
+    via."""
+    rows(
+        board,
+        "U1",
+        (12, 25),
+        0,
+        {11 + k: net for k, net in enumerate(nets)} | {k: supply if k % 2 else "GND" for k in range(1, 11)},
+        20,
+        1.27,
+        6.0,
+        (1.5, 0.5),
+    )
+    rows(
+        board,
+        "U2",
+        (66, 25),
+        0,
+        {10 - k: net for k, net in enumerate(nets)} | {k: other if k % 2 else "GND" for k in range(11, 21)},
+        20,
+        1.27,
+        6.0,
+        (1.5, 0.5),
+    )
     for k in range(10):
         y = round(25 - 5.715 + 1.27 * k, 6)
         for x, way, net in ((9.0, -1, "GND" if k % 2 == 0 else supply), (69.0, 1, other if k % 2 == 0 else "GND")):
@@ -114,7 +158,8 @@ def processor_and_converter(board: Board, nets: list[str], supply: str, other: s
 
 
 def logger() -> tuple[Board, list[Label]]:
-    """Four layers: microstrips between processor and converter over the ground plane, and a bus to the mast on the lower side under two supplies."""
+    """Four layers: microstrips between processor and converter over the ground plane, and a bus to the mast on the lower side under two
+    supplies."""
     board = four_layers("Ice gauge logger, revision B")
     nets = ["ADC_CLK", "SPI_SCK", "SPI_MOSI", "SPI_MISO", "SPI_CS", "SYNC", "TRIG", "DRDY", "WAKE", "PPS"]
     processor_and_converter(board, nets, "VDD_A", "VDD_B")
@@ -235,7 +280,12 @@ def sampler() -> tuple[Board, list[Label]]:
     ]
     board.returns = ("GND", "VCORE")
     board.classes = {
-        "bus": {"impedance": "50 ohm", "tolerance": "10%", "rise_time": "100ps", "width": f"{{L1: {OUTER}mm, L3: {INNER}mm, L6: {OUTER}mm}}"},
+        "bus": {
+            "impedance": "50 ohm",
+            "tolerance": "10%",
+            "rise_time": "100ps",
+            "width": f"{{L1: {OUTER}mm, L3: {INNER}mm, L6: {OUTER}mm}}",
+        },
         "strobe": {"impedance": "50 ohm", "tolerance": "10%", "rise_time": "300ps"},
     }
     for k, net in enumerate(nets):
@@ -301,10 +351,18 @@ def clock() -> tuple[Board, list[Label]]:
 
 
 def expected(labels: list[Label]) -> str:
-    lines = ["# Every finding `impcheck check` must report for this board, and no other: rule, net, layer, place in mm, and why it is a defect."]
+    lines = [
+        "# Every finding `impcheck check` must report for this board, and no other: rule, net, layer, place in mm, and why it is a defect."
+    ]
     lines += ["findings:" if labels else "findings: []"]
     for label in labels:
-        lines += [f"  - rule: {label.rule}", f"    net: {label.net}", f"    layer: {label.layer}", f"    at: [{label.at[0]:g}, {label.at[1]:g}]", f"    why: {label.why}"]
+        lines += [
+            f"  - rule: {label.rule}",
+            f"    net: {label.net}",
+            f"    layer: {label.layer}",
+            f"    at: [{label.at[0]:g}, {label.at[1]:g}]",
+            f"    why: {label.why}",
+        ]
     return "\n".join([*lines, ""])
 
 
@@ -312,7 +370,17 @@ BOARDS = {
     "ice-antenna": (antenna, Dialect("ice-antenna"), "Antenna board of the river-ice gauge. The files say nets and pins themselves (X2)."),
     "ice-logger": (
         logger,
-        Dialect("ice-logger", "inch", 6, "netlist", {-1: "strokes"}, {-1: "regions", 1: "clear"}, naming="suffixes", drill_unit="inch", drill_zeros="TZ"),
+        Dialect(
+            "ice-logger",
+            "inch",
+            6,
+            "netlist",
+            {-1: "strokes"},
+            {-1: "regions", 1: "clear"},
+            naming="suffixes",
+            drill_unit="inch",
+            drill_zeros="TZ",
+        ),
         "Logger board of the river-ice gauge. Plain Gerber in inches; nets and pins come from the IPC-D-356 netlist.",
     ),
     "ice-sampler": (

@@ -77,7 +77,11 @@ SPOILT_BOARDS = {
     "a tag": ("board: Tiny", "board: !!python/object/apply:os.system [echo]", r"board\.yaml:2: .*tag"),
     "a key twice": ("board: Tiny", "board: Tiny\nboard: Tine", r"board\.yaml:3: .*board.*(twice|already)"),
     "broken YAML": ("returns: [GND]", "returns: [GND", r"board\.yaml:\d+: "),
-    "a rule that is not": ("nets:\n", "rules: [standard, {via-stubs: {longest: 0.5mm}}]\nnets:\n", r"board\.yaml:11: .*via-stubs.*via-stub"),
+    "a rule that is not": (
+        "nets:\n",
+        "rules: [standard, {via-stubs: {longest: 0.5mm}}]\nnets:\n",
+        r"board\.yaml:11: .*via-stubs.*via-stub",
+    ),
 }
 
 

@@ -19,7 +19,10 @@ from impcheck.cli import main
 from tests.tiny_board import BOARD, TOP, write
 
 ROOT = Path(__file__).parent.parent
-NARROW = TOP.replace("X18000000Y5000000D01*\nD11*", "X8000000Y5000000D01*\n%ADD12C,0.150000*%\nD12*\nX12000000Y5000000D01*\nD10*\nX18000000Y5000000D01*\nD11*")
+NARROW = TOP.replace(
+    "X18000000Y5000000D01*\nD11*",
+    "X8000000Y5000000D01*\n%ADD12C,0.150000*%\nD12*\nX12000000Y5000000D01*\nD10*\nX18000000Y5000000D01*\nD11*",
+)
 
 
 def typed(*words):
@@ -111,7 +114,18 @@ def test_walk_of_a_net_that_is_not_declared(narrow):
 
 def test_rules_lists_and_explains():
     listed = typed("rules").stdout
-    for rule in ("impedance", "width", "neck-down", "reference-gap", "plane-edge", "return-via", "via-stub", "branch-stub", "open", "short"):
+    for rule in (
+        "impedance",
+        "width",
+        "neck-down",
+        "reference-gap",
+        "plane-edge",
+        "return-via",
+        "via-stub",
+        "branch-stub",
+        "open",
+        "short",
+    ):
         assert rule in listed
         assert len(typed("rules", rule).stdout) > 200
     assert "via-stub" in typed("rules", "via-stubs").stderr
@@ -131,7 +145,8 @@ def test_names_with_control_characters_do_not_reach_the_terminal(tmp_path):
 
 
 def test_help_needs_no_heavy_import():
-    code = "import sys; from impcheck.cli import main; main(['--help'], standalone_mode=False); print(sorted({'numpy','scipy','shapely','pydantic','rich','networkx','gerbonara'} & set(sys.modules)))"
+    heavy = "{'numpy', 'scipy', 'shapely', 'pydantic', 'rich', 'networkx', 'gerbonara'}"
+    code = f"import sys; from impcheck.cli import main; main(['--help'], standalone_mode=False); print(sorted({heavy} & set(sys.modules)))"
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True, cwd=ROOT)
     assert done.stdout.splitlines()[-1] == "[]"
 
@@ -152,7 +167,9 @@ def test_readme_command_checks_a_sample_board():
     assert words[0] == ".venv/bin/impcheck"
     begin = time.monotonic()
     code = "from impcheck.cli import main; main(prog_name='impcheck')"
-    done = subprocess.run([sys.executable, "-c", code, *words[1:]], capture_output=True, text=True, cwd=ROOT, check=False, env={**os.environ, "NO_COLOR": "1"})
+    done = subprocess.run(
+        [sys.executable, "-c", code, *words[1:]], capture_output=True, text=True, cwd=ROOT, check=False, env={**os.environ, "NO_COLOR": "1"}
+    )
     assert done.returncode == 1, done.stderr
     assert "reference-gap" in done.stdout
     assert time.monotonic() - begin < 300  # a hang, not a speed, is what this looks for

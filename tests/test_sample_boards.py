@@ -23,7 +23,13 @@ def test_sample_board_gives_its_listed_defects_and_nothing_else(board):
     missing = []
     for wanted in listed:
         match = next(
-            (f for f in found if (f.rule, f.net) == (wanted["rule"], wanted["net"]) and f.layer == wanted.get("layer", f.layer) and math.dist(f.at, wanted["at"]) <= NEAR),
+            (
+                f
+                for f in found
+                if (f.rule, f.net) == (wanted["rule"], wanted["net"])
+                and f.layer == wanted.get("layer", f.layer)
+                and math.dist(f.at, wanted["at"]) <= NEAR
+            ),
             None,
         )
         if match is None:

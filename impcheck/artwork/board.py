@@ -23,9 +23,11 @@ class NetClass:
     line: int = 0
 
     def width_on(self, layer: str) -> float | None:
+        """Width on a copper layer, mm; None where none is stated."""
         return self.width.get(layer, self.width.get(""))
 
     def gap_on(self, layer: str) -> float | None:
+        """Gap of a pair on a copper layer, mm; None where none is stated."""
         return self.gap.get(layer, self.gap.get(""))
 
 

@@ -85,7 +85,7 @@ def _by_library(name: str) -> Named:
     """What the habits that gerbonara knows say of a name, where all the tools that know it agree."""
     if name.rpartition(".")[2] in ("gbr", "ger", "txt", "pdf", "csv", "md", "png", "zip", "json", "xml", "html", "step", "stp"):
         return NOTHING
-    from gerbonara.layer_rules import MATCH_RULES  # noqa: PLC0415  heavy, and seldom needed
+    from gerbonara.layer_rules import MATCH_RULES
 
     found: set[Named] = set()
     for rules in MATCH_RULES.values():

@@ -59,14 +59,17 @@ class Stackup:
 
     @cached_property
     def coppers(self) -> tuple[CopperItem, ...]:
+        """The copper layers, top to bottom."""
         return tuple(item for item in self.items if isinstance(item, CopperItem))
 
     @cached_property
     def mask_top(self) -> Mask | None:
+        """The solder mask over the top layer."""
         return self.items[0] if isinstance(self.items[0], Mask) else None
 
     @cached_property
     def mask_bottom(self) -> Mask | None:
+        """The solder mask over the bottom layer."""
         return self.items[-1] if isinstance(self.items[-1], Mask) else None
 
     @cached_property

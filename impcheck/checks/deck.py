@@ -1,4 +1,5 @@
-"""Rule decks. In: YAML files of limits and a board's overrides; out: the limits of every rule, typed, with each mistake told by file and line."""
+"""Rule decks. In: YAML files of limits and a board's overrides; out: the limits of every rule, typed, with each mistake told by file
+and line."""
 
 from __future__ import annotations
 
@@ -51,7 +52,9 @@ def load_deck(board: Board) -> Deck:
         for rule, limits in deck.items():
             values.setdefault(rule, {}).update(limits)
     for override in board.overrides:
-        values.setdefault(override.rule, {}).update({key: (_written(value), board.file, override.line) for key, value in override.limits.items()})
+        values.setdefault(override.rule, {}).update(
+            {key: (_written(value), board.file, override.line) for key, value in override.limits.items()}
+        )
         if override.rule not in all_rules():
             problems.add(board.file, override.line, f"rule '{override.rule}' is not known", did_you_mean(override.rule, all_rules()))
             del values[override.rule]

@@ -21,7 +21,8 @@ def summary(name: str) -> str:
 
 
 def explain(name: str) -> str:
-    """The page of a rule: what it measures, why it matters, what to do, its limits in the standard deck. Raises InputError where there is none."""
+    """The page of a rule: what it measures, why it matters, what to do, its limits in the standard deck. Raises InputError where there
+    is none."""
     rules = all_rules()
     if name not in rules:
         raise InputError(Problem("rules", 0, f"no rule is called '{name}'", did_you_mean(name, rules)))

@@ -31,7 +31,12 @@ class Opening:
 
 
 def opening_at(
-    layer: LayerCopper, labels: Ints, returns: Set[int], at: tuple[float, float], normal: tuple[float, float], board: tuple[float, float, float, float]
+    layer: LayerCopper,
+    labels: Ints,
+    returns: Set[int],
+    at: tuple[float, float],
+    normal: tuple[float, float],
+    board: tuple[float, float, float, float],
 ) -> Opening | None:
     """The opening of a layer's return copper that holds a place; None where there is copper at the place."""
     mine = np.flatnonzero(np.isin(labels, sorted(returns)))
@@ -50,7 +55,9 @@ def opening_at(
         if shapely.disjoint(opening, shapely.get_exterior_ring(window)) or half == WINDOWS[-1]:
             break
         beyond = shapely.box(*board)
-        if not shapely.covers(beyond, window) and shapely.disjoint(opening, shapely.intersection(shapely.get_exterior_ring(window), beyond)):
+        if not shapely.covers(beyond, window) and shapely.disjoint(
+            opening, shapely.intersection(shapely.get_exterior_ring(window), beyond)
+        ):
             break
     points = shapely.get_coordinates(opening) - np.array(at)
     across = points @ np.array(normal)

@@ -1,4 +1,5 @@
-"""Where the return current of a layer change goes. In: a walk, its via, copper, nets; out: the planes on both sides and what joins them, in mm."""
+"""Where the return current of a layer change goes. In: a walk, its via, copper, nets; out: the planes on both sides and what joins
+them, in mm."""
 
 from __future__ import annotations
 
@@ -30,8 +31,8 @@ class Change:
 def return_change(artwork: Artwork, copper: Copper, nets: Nets, walk: Walk, via: Via) -> Change:
     """Looks at the planes of the runs on both sides of a via and for what joins them.
 
-    A barrel of a return net joins two planes of its own net between its ends; planes of different nets are joined by a two-pin part that the board
-    file's `joins` name or whose reference begins with C.
+    A barrel of a return net joins two planes of its own net between its ends; planes of different nets are joined by a two-pin part
+    that the board file's `joins` name or whose reference begins with C.
     """
     before = _planes(nets, _run_at(walk, via, via.entered, before=True), at_end=True)
     after = _planes(nets, _run_at(walk, via, via.left, before=False), at_end=False)

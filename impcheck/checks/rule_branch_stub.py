@@ -1,10 +1,10 @@
 """Copper hangs off the path between the declared ends.
 
-Measured: the length of each branch from the edge of the path's copper to its far end, through its vias. Pads, teardrops and copper that is shorter than
-the trace is wide are no branches; with `from` and `to` in the board file a branch to another pin is one.
+Measured: the length of each branch from the edge of the path's copper to its far end, through its vias. Pads, teardrops and copper that
+is shorter than the trace is wide are no branches; with `from` and `to` in the board file a branch to another pin is one.
 
-Why it matters: a branch splits the edge where it leaves, and what runs into it comes back from its open end after twice its delay. Branches much shorter
-than the edge act as a small capacitor.
+Why it matters: a branch splits the edge where it leaves, and what runs into it comes back from its open end after twice its delay.
+Branches much shorter than the edge act as a small capacitor.
 
 What to do: remove what is left over, move the test point or the part onto the path, or shorten the branch.
 """

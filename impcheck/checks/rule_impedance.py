@@ -1,13 +1,14 @@
 """The impedance leaves the class's tolerance for longer than a spot an edge does not see.
 
-Measured: the characteristic impedance of the cross-section at every station of plain trace and at bends, against the class's target and tolerance.
-Pads, vias and the pieces hidden by them are left to their own.
+Measured: the characteristic impedance of the cross-section at every station of plain trace and at bends, against the class's target and
+tolerance. Pads, vias and the pieces hidden by them are left to their own.
 
-Why it matters: where the local impedance changes from Z1 to Z2 an edge is reflected by (Z2 - Z1) / (Z2 + Z1). Both ends of a short spot reflect with
-opposite signs and nearly cancel, so only spots longer than a share of the distance the edge covers during its rise time count.
+Why it matters: where the local impedance changes from Z1 to Z2 an edge is reflected by (Z2 - Z1) / (Z2 + Z1). Both ends of a short spot
+reflect with opposite signs and nearly cancel, so only spots longer than a share of the distance the edge covers during its rise time
+count.
 
-What to do: look at the width, the copper beside, and the planes above and below at the place; `impcheck walk BOARD NET` shows all of them. If the whole
-net is off, compare the stackup with the fab's.
+What to do: look at the width, the copper beside, and the planes above and below at the place; `impcheck walk BOARD NET` shows all of
+them. If the whole net is off, compare the stackup with the fab's.
 """
 
 from __future__ import annotations
@@ -59,7 +60,10 @@ def _why(track: Track, station: int, context: Context) -> str:
     run = track.walk.runs[track.run[station]]
     s, i = run.stations, int(track.station[station])
     sides = []
-    for word, layer, cover in (("above", int(s.above[i]), float(s.coverage_above[i])), ("below", int(s.below[i]), float(s.coverage_below[i]))):
+    for word, layer, cover in (
+        ("above", int(s.above[i]), float(s.coverage_above[i])),
+        ("below", int(s.below[i]), float(s.coverage_below[i])),
+    ):
         if layer >= 0:
             share = "" if cover > 0.999 else f" covering {cover:.0%} of it"
             sides.append(f"reference {word} on {context.layer(layer)}, {context.height(run.layer, layer):.3f} mm away{share}")

@@ -1,12 +1,13 @@
 """The width falls below a share of the net's usual width on that layer.
 
-Measured: the width of the trace at every station of plain trace against the median width of the same net on the same layer (weighted by length); the
-finding says how long the neck is.
+Measured: the width of the trace at every station of plain trace against the median width of the same net on the same layer (weighted by
+length); the finding says how long the neck is.
 
-Why it matters: a neck is a short piece of higher impedance. Alone and short it may do little, but it is rarely meant: it comes from a fab edit, a
-trace squeezed between pads, or a stroke that was drawn twice with different apertures.
+Why it matters: a neck is a short piece of higher impedance. Alone and short it may do little, but it is rarely meant: it comes from a
+fab edit, a trace squeezed between pads, or a stroke that was drawn twice with different apertures.
 
-What to do: widen the neck, or move what forced it; where it is meant (the escape from a dense part) state a larger share in the board file.
+What to do: widen the neck, or move what forced it; where it is meant (the escape from a dense part) state a larger share in the board
+file.
 """
 
 from __future__ import annotations

@@ -1,8 +1,9 @@
 """The declared ends of a net are not joined by copper.
 
-Measured: whether every declared end (or pin) of a net can be reached from its start through copper, barrels and the parts named in `joins`; and, for the
-whole board, whether the copper that a netlist or the artwork's own attributes call by one name is one piece. What is not declared in the board file is a
-note. A declared net that cannot be followed at all (nothing says where it ends, or its copper is only a pour) is reported here too.
+Measured: whether every declared end (or pin) of a net can be reached from its start through copper, barrels and the parts named in
+`joins`; and, for the whole board, whether the copper that a netlist or the artwork's own attributes call by one name is one piece. What
+is not declared in the board file is a note. A declared net that cannot be followed at all (nothing says where it ends, or its copper is
+only a pour) is reported here too.
 
 Why it matters: the board does not work, or works through something else.
 

@@ -1,10 +1,10 @@
 """The trace runs closer to the edge of its reference plane than a multiple of its height over it.
 
-Measured: the distance across, from the edge of the trace to where the plane under (or over) it ends, wherever the plane still covers the whole trace. The
-moat to a neighbouring plane is an edge too. Short approaches, such as single antipads, are not counted.
+Measured: the distance across, from the edge of the trace to where the plane under (or over) it ends, wherever the plane still covers
+the whole trace. The moat to a neighbouring plane is an edge too. Short approaches, such as single antipads, are not counted.
 
-Why it matters: the return current spreads over about three heights to either side. Near an edge it is squeezed, the impedance rises, the field leaks
-round the edge, and the trace radiates and picks up.
+Why it matters: the return current spreads over about three heights to either side. Near an edge it is squeezed, the impedance rises,
+the field leaks round the edge, and the trace radiates and picks up.
 
 What to do: move the trace inwards or the plane's edge outwards; stitch the edge where it must stay.
 """
@@ -56,8 +56,8 @@ def check(track: Track, limits: Limits, context: Context) -> Iterator[Finding]:
 
 
 def margins(track: Track, side: str, context: Context) -> tuple[Floats, Floats, Floats]:
-    """Reference layer (-1 none), distance from the trace's edge to the nearer edge of the plane that covers it whole (inf where the cut meets no
-    edge, nan where the plane does not cover it), and height over the plane, per station."""
+    """Reference layer (-1 none), distance from the trace's edge to the nearer edge of the plane that covers it whole (inf where the cut
+    meets no edge, nan where the plane does not cover it), and height over the plane, per station."""
     layer, distance, height = np.full(len(track), -1.0), np.full(len(track), np.nan), np.zeros(len(track))
     returns = sorted(context.nets.returns)
     offset = 0

@@ -1,14 +1,15 @@
 """The plane the trace refers to is missing under (or over) part of its width.
 
-Measured: for the usual reference above and below, how much of the trace's width its copper covers at every station of trace, and which net that copper
-is of. A void is an opening closed all round, a slot one that is much longer across the trace than along it or that runs out of the plane, a split a
-place where the copper of one return net ends and that of another begins. The finding says how far the return current has to go round, and whether a plane
-on the other side of the trace softens the change.
+Measured: for the usual reference above and below, how much of the trace's width its copper covers at every station of trace, and which
+net that copper is of. A void is an opening closed all round, a slot one that is much longer across the trace than along it or that runs
+out of the plane, a split a place where the copper of one return net ends and that of another begins. The finding says how far the
+return current has to go round, and whether a plane on the other side of the trace softens the change.
 
-Why it matters: the return current of an edge runs under the trace. Where its plane is missing it makes a detour, and the loop it opens is an inductance in
-series with the line, radiates, and couples to every other trace that crosses the same opening.
+Why it matters: the return current of an edge runs under the trace. Where its plane is missing it makes a detour, and the loop it opens
+is an inductance in series with the line, radiates, and couples to every other trace that crosses the same opening.
 
-What to do: close the opening, move the trace, or give the current a way: copper across a slot, a capacitor at a split right beside the trace.
+What to do: close the opening, move the trace, or give the current a way: copper across a slot, a capacitor at a split right beside the
+trace.
 """
 
 from __future__ import annotations
@@ -57,7 +58,8 @@ def check(track: Track, limits: Limits, context: Context) -> Iterator[Finding]:
 
 
 def references(track: Track, side: str, context: Context) -> tuple[Ints, Floats, Ints]:
-    """Per station: layer of the usual reference on a side (-1 none), share of the width covered, label of its copper under the middle (-1 none)."""
+    """Per station: layer of the usual reference on a side (-1 none), share of the width covered, label of its copper under the middle
+    (-1 none)."""
     layer, cover, label = np.full(len(track), -1, np.int32), np.ones(len(track)), np.full(len(track), -1, np.int32)
     wanted = np.zeros(context.nets.count + 1, bool)
     wanted[sorted(context.nets.returns)] = True
@@ -79,7 +81,8 @@ def references(track: Track, side: str, context: Context) -> tuple[Ints, Floats,
 
 
 def _labels_beside(track: Track, spot: Spot, label: Ints, cover: Floats) -> tuple[int, int]:
-    """Labels of the reference's copper before and after a gap, the nearest fully covered stations within LOOK mm; -1 where there is none."""
+    """Labels of the reference's copper before and after a gap, the nearest fully covered stations within LOOK mm; -1 where there is
+    none."""
     found = []
     for start, step in ((int(spot.marked[0]), -1), (int(spot.marked[-1]), 1)):
         index, seen = start, -1
@@ -118,7 +121,15 @@ def _finding(
     first = int(spot.marked[0])
     plane = int(layer[first])
     middle = (spot.along[0] + spot.along[1]) / 2
-    centre = int(np.argmin(np.where(np.isin(np.arange(len(track)), np.arange(first, int(spot.marked[-1]) + 1)), np.abs((track.begin + track.end) / 2 - middle), np.inf)))
+    centre = int(
+        np.argmin(
+            np.where(
+                np.isin(np.arange(len(track)), np.arange(first, int(spot.marked[-1]) + 1)),
+                np.abs((track.begin + track.end) / 2 - middle),
+                np.inf,
+            )
+        )
+    )
     at = track.place(centre, float(np.clip(middle, track.begin[centre], track.end[centre])))
     run = track.walk.runs[track.run[centre]]
     normal = run.stations.left_normal[int(track.station[centre])]
@@ -126,10 +137,20 @@ def _finding(
     if before >= 0 and after >= 0 and before != after:
         what = _split(before, after, context)
     else:
-        opening = opening_at(context.copper.layers[plane], context.nets.piece_label[plane], context.nets.returns, at, (float(normal[0]), float(normal[1])), context.copper.outline_box)
+        opening = opening_at(
+            context.copper.layers[plane],
+            context.nets.piece_label[plane],
+            context.nets.returns,
+            at,
+            (float(normal[0]), float(normal[1])),
+            context.copper.outline_box,
+        )
         what = _void_or_slot(spot, opening, width, before, after, context)
     word = "over" if side == "above" else "under"
-    text = f"{word} {spot.length:.2f} mm of trace the reference on {context.layer(plane)} is missing: {what}; {_other_side(track, spot, side, context)}{_ohms(track, spot)}"
+    text = (
+        f"{word} {spot.length:.2f} mm of trace the reference on {context.layer(plane)} is missing: {what}; "
+        f"{_other_side(track, spot, side, context)}{_ohms(track, spot)}"
+    )
     return Finding(
         RULE,
         limits.level,
@@ -157,7 +178,7 @@ def _void_or_slot(spot: Spot, opening: Opening | None, width: float, before: int
         return f"an opening in {net}"
     across = opening.left + opening.right
     round_way = 2 * max(min(opening.left, opening.right), 0.0)
-    if opening.open_left and opening.open_right or (before < 0) != (after < 0) and opening.endless:
+    if (opening.open_left and opening.open_right) or ((before < 0) != (after < 0) and opening.endless):
         return f"the copper of {net} ends here and does not come back"
     if opening.endless:
         free = opening.right if opening.open_left else opening.left

@@ -1,13 +1,15 @@
 """A layer change moves the return current to another plane, and nothing near joins the two planes.
 
-Measured: the planes under and over the trace before and after each change of layer. Where the two sides share a plane nothing is asked for. Else the distance
-from the via to the nearest barrel of a return net that joins a plane of one side with one of the other; for planes of different nets, to the nearest
-two-pin capacitor between them (a part whose reference begins with C, or that the board file's `joins` name).
+Measured: the planes under and over the trace before and after each change of layer. Where the two sides share a plane nothing is asked
+for. Else the distance from the via to the nearest barrel of a return net that joins a plane of one side with one of the other; for
+planes of different nets, to the nearest two-pin capacitor between them (a part whose reference begins with C, or that the board file's
+`joins` name).
 
-Why it matters: the return current has to change planes too. Without a way near it spreads between the planes until it finds one: a series inductance that
-reflects, and energy between the planes that reaches every other via.
+Why it matters: the return current has to change planes too. Without a way near it spreads between the planes until it finds one: a
+series inductance that reflects, and energy between the planes that reaches every other via.
 
-What to do: put a return via beside the signal via (a capacitor where the planes are of different nets), within the distance the rule states.
+What to do: put a return via beside the signal via (a capacitor where the planes are of different nets), within the distance the rule
+states.
 """
 
 from __future__ import annotations
@@ -42,10 +44,14 @@ def check(track: Track, limits: Limits, context: Context) -> Iterator[Finding]:
         if change.shared or not change.before or not change.after or (change.distance is not None and change.distance <= reach):
             continue
         what = "via" if {label for _, label in change.before} & {label for _, label in change.after} else "capacitor"
-        nearest = f"the nearest {change.joint or what} that joins them is {change.distance:.2f} mm away" if change.distance is not None else f"no {what} joins them anywhere"
+        nearest = (
+            f"the nearest {change.joint or what} that joins them is {change.distance:.2f} mm away"
+            if change.distance is not None
+            else f"no {what} joins them anywhere"
+        )
         text = (
-            f"from {context.layer(via.entered)} to {context.layer(via.left)} the return current changes from {_words(change.before, context)} to "
-            f"{_words(change.after, context)}, and {nearest}: put a {what} between them within {reach:.2f} mm of here"
+            f"from {context.layer(via.entered)} to {context.layer(via.left)} the return current changes from "
+            f"{_words(change.before, context)} to {_words(change.after, context)}, and {nearest}: put a {what} between them within {reach:.2f} mm of here"
         )
         yield Finding(
             RULE,

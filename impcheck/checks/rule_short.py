@@ -1,7 +1,8 @@
 """Two nets that are declared or named differently are one piece of copper.
 
-Measured: whether a piece of copper, over all layers and barrels, carries more than one name from the artwork's attributes or from the netlist. A net tie
-(one two-pin part whose pads of two nets overlap, or one pad named for both) is a note, and so are shorts of nets the board file does not declare.
+Measured: whether a piece of copper, over all layers and barrels, carries more than one name from the artwork's attributes or from the
+netlist. A net tie (one two-pin part whose pads of two nets overlap, or one pad named for both) is a note, and so are shorts of nets the
+board file does not declare.
 
 Why it matters: the two nets are one net. On a signal net nothing else that is said of it holds.
 

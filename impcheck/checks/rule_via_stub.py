@@ -1,9 +1,10 @@
 """A via's barrel goes on beyond the last layer the signal uses.
 
-Measured: the length of barrel above and below the two layers of a change of layer, after back-drilling; the finding names the frequency at which the
-stub is a quarter wave long, f = c / (4 L sqrt(er)).
+Measured: the length of barrel above and below the two layers of a change of layer, after back-drilling; the finding names the frequency
+at which the stub is a quarter wave long, f = c / (4 L sqrt(er)).
 
-Why it matters: a stub is a line open at its end. Below its quarter-wave frequency it loads the line like a capacitor, near it it shorts the signal.
+Why it matters: a stub is a line open at its end. Below its quarter-wave frequency it loads the line like a capacitor, near it it shorts
+the signal.
 
 What to do: change layers so that the barrel is used to its end, back-drill it, or use a blind or buried via.
 """
@@ -48,4 +49,6 @@ def check(track: Track, limits: Limits, context: Context) -> Iterator[Finding]:
             f"the barrel goes on {stub:.2f} mm {'above' if upper > lower else 'below'} {beyond}, the last layer used: "
             f"a quarter wave at {frequency:.1f} GHz (er {er:.2f})"
         )
-        yield Finding(RULE, limits.level, track.walk.net.name, beyond, via.at, (via.at, via.at), (via.along, via.along), stub, longest, "mm", text)
+        yield Finding(
+            RULE, limits.level, track.walk.net.name, beyond, via.at, (via.at, via.at), (via.along, via.along), stub, longest, "mm", text
+        )

@@ -1,12 +1,13 @@
 """The copper's width differs from the width the class states for the layer.
 
-Measured: the width of the trace itself (not of a cut: bends and junctions are left out) at every station of plain trace, where the class states a width
-for that layer.
+Measured: the width of the trace itself (not of a cut: bends and junctions are left out) at every station of plain trace, where the
+class states a width for that layer.
 
-Why it matters: width is what the layout set to reach the impedance. A trace that was drawn, edited or scaled to another width is another line, even
-where its impedance happens to stay within tolerance.
+Why it matters: width is what the layout set to reach the impedance. A trace that was drawn, edited or scaled to another width is
+another line, even where its impedance happens to stay within tolerance.
 
-What to do: restore the width, or correct the class if the new width is meant (`impcheck rules impedance` tells what it does to the line).
+What to do: restore the width, or correct the class if the new width is meant (`impcheck rules impedance` tells what it does to the
+line).
 """
 
 from __future__ import annotations
@@ -41,7 +42,10 @@ def check(track: Track, limits: Limits, context: Context) -> Iterator[Finding]:
     judged = track.trace & np.isfinite(target)
     off = np.where(judged, track.width / np.where(judged, target, 1.0) - 1.0, 0.0)
     shortest = limits.shortest.against(context.edge(track))
-    for marked, badness, word in ((judged & (off < -limits.deviation), -off, "narrower"), (judged & (off > limits.deviation), off, "wider")):
+    for marked, badness, word in (
+        (judged & (off < -limits.deviation), -off, "narrower"),
+        (judged & (off > limits.deviation), off, "wider"),
+    ):
         for spot in track.spots(marked, judged, badness):
             if spot.length < shortest:
                 continue

@@ -33,6 +33,9 @@ def run_checks(
     pairs = sorted({profile.walk.net.pair for profile in profiles} - {""})
     if pairs:
         shown = ", ".join(pairs[:5]) + (", ..." if len(pairs) > 5 else "")
-        text = f"of pairs ({shown}) each leg is walked and its geometry judged; differential impedance, gap, coupling and skew are not judged by this version"
+        text = (
+            f"of pairs ({shown}) each leg is walked and its geometry judged; differential impedance, gap, coupling and skew are "
+            "not judged by this version"
+        )
         context.remarks.append(Remark(RemarkKind.LIMIT, text, artwork.board.file))
     return tuple(found), tuple(dict.fromkeys(context.remarks))

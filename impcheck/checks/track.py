@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from impcheck.artwork.image import Bools, Floats, Ints
 from impcheck.fields.line import SPEED
 from impcheck.fields.profile import NetProfile
-from impcheck.path.walk import Zone
+from impcheck.path.walk import Run, Zone
 
 BRIDGE = 0.2  # mm: what is good for less than this between two bad pieces parts no spot
 MEETS = 0.02  # mm: the end of a run and the start of the next one nearer than this are one place
@@ -22,7 +22,8 @@ USUAL_EPS = 4.0  # effective permittivity where a net has no station that was so
 
 @dataclass(frozen=True)
 class Spot:
-    """One place where a condition holds: stations `first` to `last` (included) of a track, those in between that are not marked included."""
+    """One place where a condition holds: stations `first` to `last` (included) of a track, those in between that are not marked
+    included."""
 
     marked: NDArray[np.int64]  # the stations marked
     length: float  # mm, of the marked ones
@@ -59,12 +60,14 @@ class Track:
     @cached_property
     def trace(self) -> Bools:
         """(n,) stations on plain trace."""
-        return self.zone == Zone.TRACE
+        found: Bools = self.zone == Zone.TRACE
+        return found
 
     @cached_property
     def bends(self) -> Bools:
         """(n,) stations at bends."""
-        return self.zone == Zone.BEND
+        found: Bools = self.zone == Zone.BEND
+        return found
 
     @cached_property
     def delay_per_mm(self) -> float:
@@ -87,8 +90,9 @@ class Track:
     def spots(self, marked: Bools, judged: Bools, badness: Floats) -> Iterator[Spot]:
         """Groups marked stations into spots.
 
-        Marked stations are one spot while they follow each other on a layer; stations between them that are not judged, or judged good for less than
-        BRIDGE mm, do not part them. `badness` (n,) says how bad each station is; the spot's worst place is the middle of its worst stations.
+        Marked stations are one spot while they follow each other on a layer; stations between them that are not judged, or judged good
+        for less than BRIDGE mm, do not part them. `badness` (n,) says how bad each station is; the spot's worst place is the middle of
+        its worst stations.
         """
         group: list[int] = []
         good = 0.0
@@ -118,9 +122,9 @@ class Track:
 
     def place(self, station: int, along: float) -> tuple[float, float]:
         """The point of the centreline at a path coordinate within the run of a station."""
-        return self.walk.runs[self.run[station]].point_at(along)
+        run: Run = self.walk.runs[int(self.run[station])]
+        return run.point_at(along)
 
     def span(self, spot: Spot) -> tuple[tuple[float, float], tuple[float, float]]:
         """Both ends of a spot on the centreline."""
         return self.place(int(spot.marked[0]), spot.along[0]), self.place(int(spot.marked[-1]), spot.along[1])
-

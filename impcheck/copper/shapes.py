@@ -77,7 +77,8 @@ def arc_points(start: Floats, centre: Floats, sweep: Floats, end: Floats, count:
 
 def radius_of(start: Floats, centre: Floats, end: Floats) -> Floats:
     """(n,) larger of the two radii an arc is given with."""
-    return np.maximum(np.hypot(*(start - centre).T), np.hypot(*(end - centre).T))
+    first, last = start - centre, end - centre
+    return np.asarray(np.maximum(np.hypot(first[:, 0], first[:, 1]), np.hypot(last[:, 0], last[:, 1])), np.float64)
 
 
 def disc(x: float, y: float, diameter: float, chord_error: float) -> BaseGeometry:

@@ -50,7 +50,10 @@ def boundary_of(section: Section, permittivity: bool = True) -> Boundary:
     everything = shapely.union_all(bodies.shapes)
     corners = np.concatenate([np.array(c.outline) for c in section.conductors])
     top_plane = [y for y in section.planes if y > corners[:, 1].max()]
-    height = float(max([corners[:, 1].max(), *(slab.top for slab in section.slabs), *top_plane]) - (0.0 if image else min([corners[:, 1].min(), *(slab.bottom for slab in section.slabs)])))
+    height = float(
+        max([corners[:, 1].max(), *(slab.top for slab in section.slabs), *top_plane])
+        - (0.0 if image else min([corners[:, 1].min(), *(slab.bottom for slab in section.slabs)]))
+    )
     low, high = corners[:, 0].min() - FAR * height, corners[:, 0].max() + FAR * height
     lines: list[BaseGeometry] = [shape.boundary for shape in bodies.shapes if not shape.is_empty]
     strips = [(index, shapely.LineString(points)) for index, points in bodies.strips]
@@ -196,17 +199,24 @@ def _permittivity(points: Floats, section: Section, metal: list[BaseGeometry], c
     return er
 
 
-def _straightened(start: Floats, end: Floats, left: Floats, right: Floats, conductor: NDArray[np.int32]) -> tuple[Floats, Floats, Floats, Floats, NDArray[np.int32]]:
+def _straightened(
+    start: Floats, end: Floats, left: Floats, right: Floats, conductor: NDArray[np.int32]
+) -> tuple[Floats, Floats, Floats, Floats, NDArray[np.int32]]:
     """Neighbours that continue each other straight, with the same on both sides, joined: what stays at an end is a true corner."""
-    segments = [(tuple(np.round(a / GRID).astype(np.int64)), tuple(np.round(b / GRID).astype(np.int64))) for a, b in zip(start, end, strict=True)]
-    kinds = [(None if np.isnan(le) else float(le), None if np.isnan(r) else float(r), int(c)) for le, r, c in zip(left, right, conductor, strict=True)]
+    segments = [
+        (tuple(np.round(a / GRID).astype(np.int64)), tuple(np.round(b / GRID).astype(np.int64))) for a, b in zip(start, end, strict=True)
+    ]
+    kinds = [
+        (None if np.isnan(le) else float(le), None if np.isnan(r) else float(r), int(c))
+        for le, r, c in zip(left, right, conductor, strict=True)
+    ]
     at: dict[tuple[int, ...], list[int]] = {}
     for index, ends in enumerate(segments):
         for vertex in ends:
             at.setdefault(vertex, []).append(index)
     alive = [True] * len(segments)
-    for vertex, members in at.items():
-        members = [m for m in members if alive[m]]
+    for vertex, meeting in at.items():
+        members = [m for m in meeting if alive[m]]
         if len(members) != 2 or members[0] == members[1]:
             continue
         a, b = members

@@ -1,7 +1,8 @@
-"""The cross-section met at a station. In: cuts of a station and the stackup; out: a canonical description, and the Section it stands for, in mm.
+"""The cross-section met at a station. In: cuts of a station and the stackup; out: a canonical description, and the Section it stands
+for, in mm.
 
-Distances are snapped to what matters to the impedance (about 0.2 %), copper beyond what matters is left out, and a section and its mirror image are
-one: so thousands of stations share a few sections.
+Distances are snapped to what matters to the impedance (about 0.2 %), copper beyond what matters is left out, and a section and its
+mirror image are one: so thousands of stations share a few sections.
 """
 
 from __future__ import annotations
@@ -16,8 +17,10 @@ from impcheck.fields.section import Coating, Conductor, Section
 Edges = tuple[tuple[float, float], ...]
 Layer = tuple[int, float, Edges]  # copper layer, its distance from the trace, its openings
 
-# What matters, in heights of the trace over the plane. Solving a 50 ohm microstrip and a stripline with an opening 2.6 heights wide beside the trace,
-# at d heights from its edge, changed the impedance by 4.7 and 1.6 % (d = 0), 1.0 and 0.15 % (d = 0.9), 0.3 and 0.01 % (d = 1.8), 0.12 and 0.00 % (d = 2.7);
+# What matters, in heights of the trace over the plane. Solving a 50 ohm microstrip and a stripline with an opening 2.6 heights wide
+# beside the trace,
+# at d heights from its edge, changed the impedance by 4.7 and 1.6 % (d = 0), 1.0 and 0.15 % (d = 0.9), 0.3 and 0.01 % (d = 1.8), 0.12 and
+# 0.00 % (d = 2.7);
 # what stands behind the opening changed it by less than 0.1 % unless the opening lies under the trace.
 MATTERS_BESIDE = 5.0  # copper beside the trace
 MATTERS_OPEN = 3.0  # an opening of the only plane near
@@ -59,11 +62,12 @@ def snapped(value: float, step: float, least: float) -> float:
 
 @dataclass(frozen=True)
 class Place:
-    """The section of a station, taken apart: its impedance is that of `main` times, for each of `beside`, its ratio to that of `base` to the power given.
+    """The section of a station, taken apart: its impedance is that of `main` times, for each of `beside`, its ratio to that of `base`
+    to the power given.
 
-    `main` holds everything but the openings that lie wholly beside the trace. Such an opening changes the impedance by a few per cent at most, and the
-    changes of several multiply; so each is taken from sections with one opening of a few distances and widths, between which the logarithm of the
-    ratio is interpolated (the powers). `tests/fields/test_cross_section.py` measures what that costs.
+    `main` holds everything but the openings that lie wholly beside the trace. Such an opening changes the impedance by a few per cent
+    at most, and the changes of several multiply; so each is taken from sections with one opening of a few distances and widths, between
+    which the logarithm of the ratio is interpolated (the powers). `tests/fields/test_cross_section.py` measures what that costs.
     """
 
     main: Shape
@@ -83,18 +87,22 @@ def place_of(
 ) -> Place:
     """The canonical section of one station.
 
-    `beside` and the edges of planes are relative to the middle of the trace; `above` and `below` list layers outwards with the return copper the cut
-    meets there. `fine` is False where no rule judges the place.
+    `beside` and the edges of planes are relative to the middle of the trace; `above` and `below` list layers outwards with the return
+    copper the cut meets there. `fine` is False where no rule judges the place.
     """
     factor = 1.0 if fine else COARSE
     width = snapped(width, WIDTH_STEP * factor, 0.001)
     half = width / 2
     sides = [[(index, _height(stackup, layer, index), edges) for index, edges in layers] for layers in (above, below)]
-    nearest = [next(((index, away, edges) for index, away, edges in side if _touches(edges, half + MATTERS_OPEN * away)), None) for side in sides]
+    nearest = [
+        next(((index, away, edges) for index, away, edges in side if _touches(edges, half + MATTERS_OPEN * away)), None) for side in sides
+    ]
     height = min((found[1] for found in nearest if found is not None), default=1.0)
     near = _beside(beside, half, MATTERS_BESIDE * height, height, GAP_STEP * factor)
-    pours = all(any(sign * (low + high) > 0 and min(abs(low), abs(high)) - half < height < high - low for low, high in near) for sign in (-1, 1))
-    shielded = [pours or other is not None and _closes(other[2], half + MATTERS_SHIELDED * other[1]) for other in nearest[::-1]]
+    pours = all(
+        any(sign * (low + high) > 0 and min(abs(low), abs(high)) - half < height < high - low for low, high in near) for sign in (-1, 1)
+    )
+    shielded = [pours or (other is not None and _closes(other[2], half + MATTERS_SHIELDED * other[1])) for other in nearest[::-1]]
     openings: list[list[Layer]] = []
     closed = [-1, -1]
     for side, layers in enumerate(sides):
@@ -114,7 +122,9 @@ def place_of(
             openings[side].append((index, away, found))
 
     def shape(above_open: list[Layer], below_open: list[Layer]) -> Shape:
-        ends = [closed[side] if given or not openings[side] else openings[side][0][0] for side, given in enumerate((above_open, below_open))]
+        ends = [
+            closed[side] if given or not openings[side] else openings[side][0][0] for side, given in enumerate((above_open, below_open))
+        ]
         planes = tuple(sorted((index, _edges(found, half + FAR * away)) for index, away, found in (*above_open, *below_open)))
         found = Shape(layer, width, near, planes, ends[0], ends[1], coated)
         return min(found, _mirrored(found), key=lambda s: (s.beside, s.planes))
@@ -213,8 +223,8 @@ def _snapped_opening(low: float, high: float, half: float, away: float, factor: 
 
 
 def _models(opening: tuple[float, float], half: float, away: float) -> list[tuple[tuple[float, float], float]]:
-    """Openings beside the trace at the nodes around one, each with its power: linear between distances, logarithmic between widths, quadratic towards
-    an opening without width."""
+    """Openings beside the trace at the nodes around one, each with its power: linear between distances, logarithmic between widths,
+    quadratic towards an opening without width."""
     low, high = opening if opening[0] >= half else (-opening[1], -opening[0])
     distance, width = (low - half) / away, (high - low) / away
     found = []
@@ -240,7 +250,8 @@ def _nodes(value: float, nodes: tuple[float, ...]) -> list[tuple[int, float]]:
 
 
 def _beside(edges: Edges, half: float, limit: float, height: float, step: float) -> Edges:
-    """The nearest copper on either side: gap and width snapped. What stands behind copper that is wide against the height is shielded by it."""
+    """The nearest copper on either side: gap and width snapped. What stands behind copper that is wide against the height is shielded
+    by it."""
     found: list[tuple[float, float]] = []
     far = half + FAR_BESIDE * limit
     right = sorted((low, high) for low, high in edges if low >= half - 1e-6)[:NEIGHBOURS]
@@ -267,7 +278,8 @@ def section_of(shape: Shape, stackup: Stackup) -> Section:
     for index, edges in shape.planes:
         bottom, top = heights[index]
         conductors += [
-            Conductor(f"plane {index}.{n}", "return", ((low, bottom), (high, bottom), (high, top), (low, top))) for n, (low, high) in enumerate(edges)
+            Conductor(f"plane {index}.{n}", "return", ((low, bottom), (high, bottom), (high, top), (low, top)))
+            for n, (low, high) in enumerate(edges)
         ]
     planes = []
     low_end, high_end = -math.inf, math.inf
@@ -282,20 +294,21 @@ def section_of(shape: Shape, stackup: Stackup) -> Section:
         for slab in stackup.slabs
         if slab.top > low_end + 1e-9 and slab.bottom < high_end - 1e-9
     )
-    top, bottom = stackup.mask_top, stackup.mask_bottom
-    over = shape.closed_above < 0 and top is not None and (shape.coated or shape.layer != 0)
-    under = shape.closed_below < 0 and bottom is not None and (shape.coated or shape.layer != len(heights) - 1)
+    upper, lower = stackup.mask_top, stackup.mask_bottom
+    over = shape.closed_above < 0 and upper is not None and (shape.coated or shape.layer != 0)
+    under = shape.closed_below < 0 and lower is not None and (shape.coated or shape.layer != len(heights) - 1)
     return Section(
         slabs=slabs,
         conductors=tuple(conductors),
         planes=tuple(planes),
-        coating=Coating(top.thickness, top.er, top.loss_tangent) if over and top is not None else None,
-        coating_below=Coating(bottom.thickness, bottom.er, bottom.loss_tangent) if under and bottom is not None else None,
+        coating=Coating(upper.thickness, upper.er, upper.loss_tangent) if over and upper is not None else None,
+        coating_below=Coating(lower.thickness, lower.er, lower.loss_tangent) if under and lower is not None else None,
     )
 
 
 def _trapezoid(name: str, role: str, low: float, high: float, layer: int, stackup: Stackup) -> Conductor:
-    """A trace as etched: as wide as drawn where it is bonded, narrower by the layer's etch on the far side (never less than a tenth of it)."""
+    """A trace as etched: as wide as drawn where it is bonded, narrower by the layer's etch on the far side (never less than a tenth of
+    it)."""
     bottom, top = stackup.heights[layer]
     cut = min(stackup.coppers[layer].etch, 0.9 * (high - low)) / 2
     if stackup.bonded_below[layer]:

@@ -1,8 +1,9 @@
 """Potential and field of charged panels. In: targets and panels in mm; out: influence matrices (eps0 = 1, charges per length).
 
-A panel is straight, with q Gauss nodes whose charge densities are the unknowns. Far from a panel the Gauss rule is used; near it the density's
-Legendre series is integrated in closed form through Legendre functions of the second kind, with zeta = (z - middle) / half a panel in the complex
-plane: int P_n(t) / (zeta - t) dt = 2 Q_n(zeta) and int P_n(t) ln|zeta - t| dt = 2 Re(Q_{n+1} - Q_{n-1}) / (2 n + 1) for n >= 1.
+A panel is straight, with q Gauss nodes whose charge densities are the unknowns. Far from a panel the Gauss rule is used; near it the
+density's Legendre series is integrated in closed form through Legendre functions of the second kind, with zeta = (z - middle) / half a
+panel in the complex plane: int P_n(t) / (zeta - t) dt = 2 Q_n(zeta) and int P_n(t) ln|zeta - t| dt = 2 Re(Q_{n+1} - Q_{n-1}) / (2 n +
+1) for n >= 1.
 """
 
 from __future__ import annotations

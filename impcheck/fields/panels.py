@@ -1,13 +1,15 @@
 """Panels on the boundaries. In: a Boundary; out: source panels, unknowns and collocation points, in mm.
 
-Every end of a segment is a corner where the charge density may be singular; the panel there carries s = g / (2 L v) at the distance L v^2 from the
-corner, g a polynomial of v, evaluated on sub-panels and condensed to its q unknowns by a constant matrix that keeps the Legendre moments.
+Every end of a segment is a corner where the charge density may be singular; the panel there carries s = g / (2 L v) at the distance L
+v^2 from the corner, g a polynomial of v, evaluated on sub-panels and condensed to its q unknowns by a constant matrix that keeps the
+Legendre moments.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import lru_cache
+from itertools import pairwise
 
 import numpy as np
 from numpy.polynomial import legendre
@@ -48,15 +50,15 @@ class Mesh:
 
 @lru_cache
 def condensation(q: int) -> tuple[Floats, Floats, Floats]:
-    """Break points of the sub-panels on [0, 1], the (SUBPANELS * q, q) matrix from unknowns to nodal densities times the panel's length, and the
-    unknowns' places v."""
-    nodes, weights, _ = gauss(q)
+    """Break points of the sub-panels on [0, 1], the (SUBPANELS * q, q) matrix from unknowns to nodal densities times the panel's
+    length, and the unknowns' places v."""
+    nodes, _, _ = gauss(q)
     v = (nodes + 1) / 2
     breaks = np.array([0.0, *(RATIO ** -np.arange(SUBPANELS - 1, -1, -1.0))])
     lagrange = np.linalg.inv(np.vander(v, q, increasing=True))  # (power, node)
     fine_nodes, fine_weights = legendre.leggauss(24)
     rows = []
-    for a, b in zip(breaks[:-1], breaks[1:], strict=True):
+    for a, b in pairwise(breaks.tolist()):
         v0, v1 = np.sqrt(a), np.sqrt(b)
         vv = v0 + (v1 - v0) * (fine_nodes + 1) / 2
         t = (2 * vv**2 - a - b) / (b - a)
@@ -83,8 +85,10 @@ def mesh_of(boundary: Boundary, q: int, grading: Grading) -> Mesh:
         points = [a + direction * c for c in cuts]
         ends.append((points[0], points[1], index))
         ends.append((points[-1], points[-2], index))
-        plain.extend((p, r, index) for p, r in zip(points[1:-2], points[2:-1], strict=True))
-    p0, p1, ps = (np.array(x) for x in zip(*plain, strict=True)) if plain else (np.empty(0, complex), np.empty(0, complex), np.empty(0, int))
+        plain.extend((p, r, index) for p, r in pairwise(points[1:-1]))
+    p0, p1, ps = (
+        (np.array(x) for x in zip(*plain, strict=True)) if plain else (np.empty(0, complex), np.empty(0, complex), np.empty(0, int))
+    )
     c0, c1, cs = (np.array(x) for x in zip(*ends, strict=True))
     sub0 = c0[:, None] + (c1 - c0)[:, None] * breaks[None, :-1]
     sub1 = c0[:, None] + (c1 - c0)[:, None] * breaks[None, 1:]
@@ -136,7 +140,7 @@ def _cuts(a: complex, b: complex, corners: NDArray[np.complex128], grading: Grad
         (low if side == 0 else high).append(low[-1] + size if side == 0 else high[-1] - size)
     cuts = low + high[::-1]
     done: list[float] = [cuts[0]]
-    for index, (p, r) in enumerate(zip(cuts[:-1], cuts[1:], strict=True)):
+    for index, (p, r) in enumerate(pairwise(cuts)):
         pieces = [(p, r)]
         if 0 < index < len(cuts) - 2 and len(others):
             while True:

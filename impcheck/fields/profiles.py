@@ -31,8 +31,8 @@ def profile_nets(
 ) -> tuple[tuple[NetProfile, ...], tuple[Remark, ...]]:
     """Fields of every station of every walk, and remarks on what could not be solved.
 
-    Copper beside a trace counts at 0 V, whether it is a return net or a quiet foreign net (its driver holds it); the own net's other legs stay out of
-    the section. `jobs` processes share the solving; the result does not depend on their number.
+    Copper beside a trace counts at 0 V, whether it is a return net or a quiet foreign net (its driver holds it); the own net's other
+    legs stay out of the section. `jobs` processes share the solving; the result does not depend on their number.
     """
     returns = np.zeros(nets.count, bool)
     returns[sorted(nets.returns)] = True
@@ -55,7 +55,10 @@ def profile_nets(
     remarks = []
     if lost:
         total = sum(len(index) for runs in rows for index in runs)
-        text = f"{lost} of {total} stations have no cross-section that could be solved (nothing near to return on, or copper that touches): they carry no impedance"
+        text = (
+            f"{lost} of {total} stations have no cross-section that could be solved (nothing near to return on, or copper that "
+            "touches): they carry no impedance"
+        )
         remarks.append(Remark(RemarkKind.LIMIT, text))
     return tuple(profiles), tuple(remarks)
 
@@ -102,7 +105,9 @@ class _Cut:
     def edges(self, i: int) -> Edges:
         """Low and high edges at station i, sorted, overlaps merged."""
         found: list[tuple[float, float]] = []
-        for low, high in sorted(zip(self.low[self.first[i] : self.first[i + 1]].tolist(), self.high[self.first[i] : self.first[i + 1]].tolist(), strict=True)):
+        for low, high in sorted(
+            zip(self.low[self.first[i] : self.first[i + 1]].tolist(), self.high[self.first[i] : self.first[i + 1]].tolist(), strict=True)
+        ):
             if found and low <= found[-1][1] + 1e-6:
                 found[-1] = (found[-1][0], max(high, found[-1][1]))
             else:
@@ -136,7 +141,11 @@ def _coated(run: Run, stackup: Stackup, copper: Copper) -> Bools:
 
 
 def _solve_places(places: list[Place], stackup: Stackup, jobs: int) -> list[Solved]:
-    shapes = {shape: None for place in places for shape in ((place.main, place.base, *(part for part, _ in place.beside)) if place.beside else (place.main,))}
+    shapes = {
+        shape: None
+        for place in places
+        for shape in ((place.main, place.base, *(part for part, _ in place.beside)) if place.beside else (place.main,))
+    }
     solved = dict(zip(shapes, _solve_all(list(shapes), stackup, jobs), strict=True))
     found = []
     for place in places:

@@ -1,13 +1,11 @@
 """The quasi-TEM solution of a section. In: a Section in mm; out: a Line with its matrices per mm.
 
-Unknown is the total (free and bound) charge on every copper surface and every dielectric interface. On copper its potential is prescribed; on an
-interface the normal flux is continuous: k E_n + s / 2 = 0 with k = (e_left - e_right) / (e_left + e_right). A plane below is an image. C comes from
-the free charge e_outside * s; C without dielectrics from the copper-copper block of the same matrix.
+Unknown is the total (free and bound) charge on every copper surface and every dielectric interface. On copper its potential is
+prescribed; on an interface the normal flux is continuous: k E_n + s / 2 = 0 with k = (e_left - e_right) / (e_left + e_right). A plane
+below is an image. C comes from the free charge e_outside * s; C without dielectrics from the copper-copper block of the same matrix.
 """
 
 from __future__ import annotations
-
-from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -27,8 +25,8 @@ GRADINGS = (Grading(0.6, 4.0, 2.5), Grading(0.4, 2.5, 1.3), Grading(0.2, 1.8, 0.
 def solve(section: Section, accuracy: float = 2e-3) -> Line:
     """Solves one section.
 
-    `accuracy` is the relative error of the impedance that the estimate has to meet; panels are refined until it does (at most twice, the estimate
-    then says what was reached). Raises SectionError for a section without a sensible solution.
+    `accuracy` is the relative error of the impedance that the estimate has to meet; panels are refined until it does (at most twice,
+    the estimate then says what was reached). Raises SectionError for a section without a sensible solution.
     """
     boundary = boundary_of(section)
     line: Line | None = None
@@ -46,7 +44,7 @@ def _line(boundary: Boundary, fine: tuple[Floats, Floats], coarse: tuple[Floats,
     c, c0 = (epsilon_0 * 1e-3 * part for part in fine)
     difference = max(float(np.max(np.abs(a - b)) / np.max(np.abs(a))) for a, b in zip(fine, coarse, strict=True))
     names = tuple(name for name, loose in zip(boundary.names, boundary.floating, strict=True) if not loose)
-    return Line(names, c, c0, mu_0 * 1e-3 * epsilon_0 * 1e-3 * np.linalg.inv(c0), 0.25 * difference)
+    return Line(names, c, c0, np.asarray(mu_0 * 1e-3 * epsilon_0 * 1e-3 * np.linalg.inv(c0), np.float64), 0.25 * difference)
 
 
 def capacitances(boundary: Boundary, q: int, grading: Grading) -> tuple[Floats, Floats]:
@@ -123,7 +121,9 @@ def _sources(mesh: Mesh, q: int) -> tuple[NDArray[np.complex128], Floats]:
     return points, (np.abs(mesh.arm)[:, None] * weights).ravel()
 
 
-def _near(points: NDArray[np.complex128], mesh: Mesh, mirrored: bool) -> tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.complex128], NDArray[np.complex128]]:
+def _near(
+    points: NDArray[np.complex128], mesh: Mesh, mirrored: bool
+) -> tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.complex128], NDArray[np.complex128]]:
     middle, arm = (np.conj(mesh.middle), np.conj(mesh.arm)) if mirrored else (mesh.middle, mesh.arm)
     dx = points.real[:, None] - middle.real
     dy = points.imag[:, None] - middle.imag
@@ -138,10 +138,7 @@ def _potential(mesh: Mesh, points: NDArray[np.complex128], image: bool, q: int) 
     dx2 = (points.real[:, None] - source.real) ** 2
     r2 = dx2 + (points.imag[:, None] - source.imag) ** 2
     r2[r2 == 0] = 1.0  # a collocation point on its own node: replaced by the closed form below
-    if image:
-        far = np.log((dx2 + (points.imag[:, None] + source.imag) ** 2) / r2)
-    else:
-        far = -np.log(r2)
+    far = np.log((dx2 + (points.imag[:, None] + source.imag) ** 2) / r2) if image else -np.log(r2)
     far *= weight / (4 * np.pi)
     for mirrored in (False, True) if image else (False,):
         target, panel, zeta, arm = _near(points, mesh, mirrored)

@@ -73,4 +73,3 @@ def _of_run(run: Run, fields: RunProfile) -> list[Stretch]:
             )
         )
     return found
-

@@ -16,8 +16,8 @@ from impcheck.nets.touching import label_copper
 def connect(artwork: Artwork, copper: Copper) -> Nets:
     """Finds which copper belongs to which net.
 
-    Raises InputError, with every problem found, where a declared net, pin, place, join or return net is nowhere in the files, or where a net's
-    end lies on another net.
+    Raises InputError, with every problem found, where a declared net, pin, place, join or return net is nowhere in the files, or where
+    a net's end lies on another net.
     """
     piece_label, barrel_label, count = label_copper(copper.layers, copper.barrels)
     finder = Finder(copper, piece_label, barrel_label)
@@ -26,7 +26,9 @@ def connect(artwork: Artwork, copper: Copper) -> Nets:
     problems = Problems()
     declared = Declarer(artwork, finder, names, evidence.pins, problems).all()
     called = {net.name for net in declared}
-    own = {label for net in declared for label in net.labels if set(names.get(label, ())) <= called}  # a plane shorted to a net stays a plane
+    own = {
+        label for net in declared for label in net.labels if set(names.get(label, ())) <= called
+    }  # a plane shorted to a net stays a plane
     remarks = list(evidence.remarks)
     if artwork.board.returns:
         returns, shown = named_returns(artwork.board, names, problems)

@@ -1,4 +1,5 @@
-"""The nets a board file declares, found in the copper. In: requests, names, pins; out: declared nets with their ends, or problems with their lines."""
+"""The nets a board file declares, found in the copper. In: requests, names, pins; out: declared nets with their ends, or problems with
+their lines."""
 
 from __future__ import annotations
 
@@ -65,14 +66,21 @@ class Declarer:
         if not hits:
             unnamed = [pin.label for pin in (*begin, *ends) if pin.label not in self.names]
             if not unnamed or len(unnamed) < len(begin) + len(ends):
-                self.problems.add(self.file, request.line, f"net '{request.net}' is nowhere in the files", did_you_mean(request.net, self.labels_of))
+                self.problems.add(
+                    self.file, request.line, f"net '{request.net}' is nowhere in the files", did_you_mean(request.net, self.labels_of)
+                )
                 return []
             for label in dict.fromkeys(unnamed):
                 self.names[label] = (request.net,)
                 self.labels_of[request.net].append(label)
             hits = [request.net]
         if len(hits) > 1 and (begin or ends):
-            self.problems.add(self.file, request.line, f"'{request.net}' stands for {len(hits)} nets, so from and to cannot name one pin", "leave from and to out, or declare the nets one by one")
+            self.problems.add(
+                self.file,
+                request.line,
+                f"'{request.net}' stands for {len(hits)} nets, so from and to cannot name one pin",
+                "leave from and to out, or declare the nets one by one",
+            )
             return []
         return [self.declared(name, request, begin, ends, joins) for name in hits]
 
@@ -111,7 +119,12 @@ class Declarer:
             numbers = [pin.number for pin in self.by_component[end.component]]
             self.problems.add(self.file, end.line, f"part {end.component} has no pin '{end.pin}'", did_you_mean(end.pin, numbers))
         else:
-            self.problems.add(self.file, end.line, f"pin {end} is nowhere: no part is called '{end.component}'", did_you_mean(end.component, self.by_component))
+            self.problems.add(
+                self.file,
+                end.line,
+                f"pin {end} is nowhere: no part is called '{end.component}'",
+                did_you_mean(end.component, self.by_component),
+            )
         return None
 
     def place(self, end: End) -> BoardPin | None:
@@ -127,7 +140,9 @@ class Declarer:
                     barrel = int(self.finder.barrel_at(point, 0.0)[0])
                     through = barrel >= 0 and self.finder.barrel_label[barrel] == label
                     return BoardPin("", "", end.at, None if through else layer, label, "")
-        self.problems.add(self.file, end.line, f"there is no copper at {end}", "give a place on the net's copper, in the artwork's own coordinates")
+        self.problems.add(
+            self.file, end.line, f"there is no copper at {end}", "give a place on the net's copper, in the artwork's own coordinates"
+        )
         return None
 
     def joins(self) -> list[Join]:
@@ -147,8 +162,8 @@ class Declarer:
         return found
 
     def openings(self, labels: Iterable[int]) -> list[BoardPin]:
-        """Places where the solder mask lets a net's copper be soldered: its ends where nothing names pins. Openings over a barrel count only where
-        there are not two others (an open via is no end)."""
+        """Places where the solder mask lets a net's copper be soldered: its ends where nothing names pins. Openings over a barrel count
+        only where there are not two others (an open via is no end)."""
         wanted = set(labels)
         plain: list[BoardPin] = []
         drilled: list[BoardPin] = []
@@ -161,7 +176,9 @@ class Declarer:
             which, piece = shapely.STRtree(copper.layers[layer].shape[pieces]).query(openings, predicate="intersects")
             for opening in np.unique(which).tolist():
                 label = int(self.finder.piece_label[layer][pieces[piece[which == opening][0]]])
-                centre = shapely.get_coordinates(shapely.point_on_surface(openings[opening]) if not _holds(openings[opening]) else openings[opening].centroid)[0]
+                centre = shapely.get_coordinates(
+                    shapely.point_on_surface(openings[opening]) if not _holds(openings[opening]) else openings[opening].centroid
+                )[0]
                 barrel = int(self.finder.barrel_at(centre[None, :], 0.0)[0])
                 through = barrel >= 0 and self.finder.barrel_label[barrel] == label
                 pin = BoardPin("", "", (float(centre[0]), float(centre[1])), None if through else layer, label, "")

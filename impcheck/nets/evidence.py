@@ -29,7 +29,9 @@ class Evidence:
     netlist_names: dict[int, Counter[str]] = field(default_factory=lambda: defaultdict(Counter))
     ties: set[frozenset[str]] = field(default_factory=set)  # names given to one pad together
     pins: list[BoardPin] = field(default_factory=list)
-    piece_names: list[tuple[Ints, tuple[tuple[str, ...], ...]]] = field(default_factory=list)  # per layer: index into names a piece, -1 none
+    piece_names: list[tuple[Ints, tuple[tuple[str, ...], ...]]] = field(
+        default_factory=list
+    )  # per layer: index into names a piece, -1 none
     places: dict[tuple[int, str], list[tuple[tuple[float, float], int | None]]] = field(default_factory=lambda: defaultdict(list))
     anchored: set[tuple[str, int]] = field(default_factory=set)  # (name, label) with a pin, a netlist point or a named pad
     remarks: list[Remark] = field(default_factory=list)
@@ -174,7 +176,9 @@ def _netlist(artwork: Artwork, finder: Finder, evidence: Evidence) -> None:
     if len(lost):
         first = lost[0]
         x, y = points.at[first].tolist()
-        text = f"{len(lost)} of {len(points.net)} netlist points lie on no copper, the first of net {points.net[first]} at ({x:.3f}, {y:.3f})"
+        text = (
+            f"{len(lost)} of {len(points.net)} netlist points lie on no copper, the first of net {points.net[first]} at ({x:.3f}, {y:.3f})"
+        )
         evidence.remarks.append(Remark(RemarkKind.DISAGREEMENT, text, points.file, int(points.line[first])))
 
 

@@ -95,8 +95,8 @@ def _tied_by_a_part(search: _Search, label: int, one: str, other: str) -> bool:
 
 
 def _renamed(search: _Search, told: set[tuple[int, frozenset[str]]]) -> list[NetFault]:
-    """Copper that the attributes and the netlist call by different names, where that is more than a renaming: one of the two names stands on
-    other copper as well."""
+    """Copper that the attributes and the netlist call by different names, where that is more than a renaming: one of the two names
+    stands on other copper as well."""
     attributes, netlist = search.evidence.attribute_names, search.evidence.netlist_names
     labels_of: dict[str, set[int]] = defaultdict(set)
     for source in (attributes, netlist):

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
 from dataclasses import dataclass
 
 import numpy as np
@@ -42,8 +43,8 @@ class Meetings:
         for layer, (labels, (net, names)) in enumerate(zip(self.finder.piece_label, self.evidence.piece_names, strict=True)):
             wanted = [index for index, found in enumerate(names) if name in found]
             nodes.update((layer, piece) for piece in np.flatnonzero((labels == label) & np.isin(net, wanted)).tolist())
-        for at, layer in self.evidence.places.get((label, name), ()):
-            nodes.update(self._nodes_at(label, at, layer))
+        for at, on in self.evidence.places.get((label, name), ()):
+            nodes.update(self._nodes_at(label, at, on))
         return nodes
 
     def _nodes_at(self, label: int, at: tuple[float, float], layer: int | None) -> list[Node]:
@@ -118,7 +119,7 @@ class Meetings:
         nodes = [node for node in inner if _parts_nets(graph, sides, node=node)]
         if nodes:
             return self._bridge(graph, sides, nodes[len(nodes) // 2])
-        edges = [pair for pair in zip(path, path[1:], strict=False) if _parts_nets(graph, sides, edge=pair)]
+        edges = [pair for pair in pairwise(path) if _parts_nets(graph, sides, edge=pair)]
         if edges:
             return self._contact(graph, *edges[len(edges) // 2])
         return None

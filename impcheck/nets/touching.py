@@ -116,7 +116,8 @@ def _point_segment(p: Floats, a: Floats, b: Floats) -> Floats:
     d = b - a
     square = np.einsum("ij,ij->i", d, d)
     t = np.clip(np.einsum("ij,ij->i", p - a, d) / np.where(square > 0, square, 1.0), 0.0, 1.0)
-    return np.hypot(*(p - a - t[:, None] * d).T)
+    away: Floats = p - a - t[:, None] * d
+    return np.asarray(np.hypot(away[:, 0], away[:, 1]), np.float64)
 
 
 def _barrel_edges(layer: LayerCopper, barrels: Barrels, offset: int, pieces: int) -> NDArray[np.int64]:
@@ -125,7 +126,7 @@ def _barrel_edges(layer: LayerCopper, barrels: Barrels, offset: int, pieces: int
         return np.empty((0, 2), np.int64)
     middle = (barrels.start[here] + barrels.end[here]) / 2
     round_hole = (barrels.start[here] == barrels.end[here]).all(axis=1)
-    probe = shapely.points(middle).astype(object)
+    probe = np.asarray(shapely.points(middle), object)
     for index in np.flatnonzero(~round_hole).tolist():
         probe[index] = shapely.linestrings([barrels.start[here[index]], barrels.end[here[index]]])
     reach = barrels.diameter[here] / 2 + TOUCH

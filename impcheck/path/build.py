@@ -23,8 +23,8 @@ def walk_nets(artwork: Artwork, copper: Copper, nets: Nets) -> tuple[Walk, ...]:
     shorted = [set(net.labels) & nets.returns for net in nets.declared]
     if any(shorted):
         rest = tuple(net for net, found in zip(nets.declared, shorted, strict=True) if not found)
-        walks = iter(walk_nets(artwork, copper, replace(nets, declared=rest)))
-        return tuple(_shorted(net, nets, min(found)) if found else next(walks) for net, found in zip(nets.declared, shorted, strict=True))
+        walked = iter(walk_nets(artwork, copper, replace(nets, declared=rest)))
+        return tuple(_shorted(net, nets, min(found)) if found else next(walked) for net, found in zip(nets.declared, shorted, strict=True))
     if not nets.declared:
         return ()
     graph = build_graph(copper, nets)
@@ -64,7 +64,9 @@ def walk_nets(artwork: Artwork, copper: Copper, nets: Nets) -> tuple[Walk, ...]:
 
 def _shorted(net: DeclaredNet, nets: Nets, label: int) -> Walk:
     other = next((name for name in nets.names.get(label, ()) if name != net.name), "a return net")
-    return Walk(net, "unresolved", f"its copper is one piece with {other}, a return net, so it has no path of its own", (), (), (), (), None, ())
+    return Walk(
+        net, "unresolved", f"its copper is one piece with {other}, a return net, so it has no path of its own", (), (), (), (), None, ()
+    )
 
 
 def _walk(net: DeclaredNet, route: Route, legs: list[Leg], stations: list[Stations], branches: list[Branch]) -> Walk:

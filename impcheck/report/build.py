@@ -1,13 +1,14 @@
-"""The result document put together. In: artwork, copper, profiles, findings, remarks; out: a Document with rounded numbers in a fixed order."""
+"""The result document put together. In: artwork, copper, profiles, findings, remarks; out: a Document with rounded numbers in a fixed
+order."""
 
 from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from importlib.metadata import version
 
 import numpy as np
 
-import impcheck
 from impcheck.artwork.parts import Artwork
 from impcheck.checks.finding import Finding
 from impcheck.checks.returns import nearest_return_via
@@ -35,8 +36,10 @@ def build_document(
     judged = [finding_part(finding, name) for finding, name in zip(ordered, fingerprints(ordered), strict=True)]
     counts = {level: sum(f.level == level and f.waived is None for f in judged) for level in LEVELS}
     return Document(
-        version=impcheck.__version__,
-        board=BoardPart(name=artwork.board.name, file=artwork.board.file, layers=list(artwork.names), size_mm=(rounded(x1 - x0), rounded(y1 - y0))),
+        version=version("impcheck"),
+        board=BoardPart(
+            name=artwork.board.name, file=artwork.board.file, layers=list(artwork.names), size_mm=(rounded(x1 - x0), rounded(y1 - y0))
+        ),
         nets=parts,
         findings=judged,
         rests_on=[RemarkPart(kind=r.kind.value, text=r.text, file=r.file, line=r.line) for r in dict.fromkeys(remarks)],
@@ -63,13 +66,21 @@ def net_part(artwork: Artwork, copper: Copper, nets: Nets, profile: NetProfile) 
         distance = nearest_return_via(artwork, copper, nets, walk, via)
         stub = max(stub_lengths(artwork, copper, via))
         names = artwork.names
-        vias.append(ViaPart(at=point(via.at), start=names[via.entered], end=names[via.left], stub_mm=rounded(stub), return_via_mm=None if distance is None else rounded(distance)))
+        vias.append(
+            ViaPart(
+                at=point(via.at),
+                start=names[via.entered],
+                end=names[via.left],
+                stub_mm=rounded(stub),
+                return_via_mm=None if distance is None else rounded(distance),
+            )
+        )
     return NetPart(
         name=declared.name,
         net_class=wanted.name,
         kind="pair" if declared.pair else "single",
         pair=declared.pair or None,
-        status=walk.status,  # type: ignore[arg-type]
+        status=walk.status,
         reason=walk.reason or None,
         length_mm=rounded(max((run.along[1] for run in walk.runs), default=0.0)),
         delay_ps=farthest_delay(profile),
@@ -95,7 +106,7 @@ def stretch_part(artwork: Artwork, stretch: Stretch) -> StretchPart:
         above=None if stretch.above < 0 else names[stretch.above],
         below=None if stretch.below < 0 else names[stretch.below],
         coverage=round(min(1.0, max(0.0, stretch.coverage)), 3),
-        zone=Zone(stretch.zone).name.lower(),  # type: ignore[arg-type]
+        zone=Zone(stretch.zone).name.lower(),
     )
 
 
@@ -103,7 +114,7 @@ def finding_part(finding: Finding, fingerprint: str) -> FindingPart:
     """One finding of the document."""
     return FindingPart(
         rule=finding.rule,
-        level=finding.level,  # type: ignore[arg-type]
+        level=finding.level,
         net=finding.net,
         layer=finding.layer,
         at=point(finding.at),
@@ -130,7 +141,11 @@ def impedance_range(profile: NetProfile) -> Range | None:
     if not use.any():
         return None
     weights = np.maximum(lengths[use], 1e-9)
-    return Range(min=round(float(ohms[use].min()), 2), max=round(float(ohms[use].max()), 2), mean=round(float(np.average(ohms[use], weights=weights)), 2))
+    return Range(
+        min=round(float(ohms[use].min()), 2),
+        max=round(float(ohms[use].max()), 2),
+        mean=round(float(np.average(ohms[use], weights=weights)), 2),
+    )
 
 
 def farthest_delay(profile: NetProfile) -> float | None:

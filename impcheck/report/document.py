@@ -1,7 +1,8 @@
-"""The result document (format 1). In: everything a check found; out: a pydantic model that is the JSON file and what the Python API returns.
+"""The result document (format 1). In: everything a check found; out: a pydantic model that is the JSON file and what the Python API
+returns.
 
-Lengths are mm, delays ps, impedances ohm; positions are in the artwork's own coordinates. The same input gives the same bytes: no times, no
-absolute paths.
+Lengths are mm, delays ps, impedances ohm; positions are in the artwork's own coordinates. The same input gives the same bytes: no
+times, no absolute paths.
 """
 
 from __future__ import annotations
@@ -58,7 +59,9 @@ class StretchPart(Part):
     above: str | None = Field(description="layer of the reference above")
     below: str | None
     coverage: float = Field(ge=0, le=1, description="share of the width that every usual reference covers, the least of both sides")
-    zone: Literal["trace", "bend", "junction", "pad", "via"] = Field(description="what the place belongs to; trace rules judge trace and bend")
+    zone: Literal["trace", "bend", "junction", "pad", "via"] = Field(
+        description="what the place belongs to; trace rules judge trace and bend"
+    )
 
 
 class ViaPart(Part):

@@ -46,7 +46,9 @@ def write_atomically(path: Path, text: str) -> None:
         Path(name).chmod(0o666 & ~mask)  # mkstemp makes private files; a result file is as readable as any other
         Path(name).replace(path)
     except OSError as error:
-        raise InputError(Problem(str(path), 0, f"cannot be written: {error.strerror}", "name a file in a folder that exists and may be written")) from None
+        raise InputError(
+            Problem(str(path), 0, f"cannot be written: {error.strerror}", "name a file in a folder that exists and may be written")
+        ) from None
     finally:
         with contextlib.suppress(OSError):
             if name:

@@ -1,4 +1,5 @@
-"""A name for a finding that lasts. In: findings; out: one short hexadecimal string each, the same when unrelated parts of the board move."""
+"""A name for a finding that lasts. In: findings; out: one short hexadecimal string each, the same when unrelated parts of the board
+move."""
 
 from __future__ import annotations
 
@@ -15,8 +16,9 @@ OFFSET = 0.137  # mm: keeps round numbers, which boards are full of, off the bor
 def fingerprints(findings: Sequence[Finding]) -> list[str]:
     """One fingerprint a finding, same order.
 
-    Made of the rule, the net, the layer and the cell of the place along the net, counted from the pin where the walk starts: no coordinate of
-    the board goes in, so an origin or another part that moves changes nothing. Several findings of one rule in one cell are numbered.
+    Made of the rule, the net, the layer and the cell of the place along the net, counted from the pin where the walk starts: no
+    coordinate of the board goes in, so an origin or another part that moves changes nothing. Several findings of one rule in one cell
+    are numbered.
     """
     seen: Counter[str] = Counter()
     found = []

@@ -1,4 +1,5 @@
-"""The report a person reads on a terminal. In: a result document; out: text, per net its target, range and verdict, per finding its place and limit."""
+"""The report a person reads on a terminal. In: a result document; out: text, per net its target, range and verdict, per finding its
+place and limit."""
 
 from __future__ import annotations
 
@@ -33,7 +34,11 @@ def print_document(document: Document) -> None:
     screen = console()
     board = document.board
     size = f"{board.size_mm[0]:.1f} x {board.size_mm[1]:.1f} mm"
-    screen.print(Text.assemble((clean(board.name), "bold"), f"   {len(board.layers)} copper layers, {size}, {count(document.summary.nets, 'net')} declared"))
+    screen.print(
+        Text.assemble(
+            (clean(board.name), "bold"), f"   {len(board.layers)} copper layers, {size}, {count(document.summary.nets, 'net')} declared"
+        )
+    )
     screen.print()
     screen.print(Padding(net_table(document), (0, 0, 1, 2)))
     for finding in document.findings:
@@ -50,13 +55,25 @@ def net_table(document: Document) -> Table:
         if finding.waived is None:
             by_net[finding.net][finding.level] += 1
     table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="dim")
-    for heading, justify in (("net", "left"), ("class", "left"), ("target", "right"), ("least", "right"), ("mean", "right"), ("most ohm", "right"), ("length mm", "right"), ("delay ps", "right"), ("verdict", "left")):
+    for heading, justify in (
+        ("net", "left"),
+        ("class", "left"),
+        ("target", "right"),
+        ("least", "right"),
+        ("mean", "right"),
+        ("most ohm", "right"),
+        ("length mm", "right"),
+        ("delay ps", "right"),
+        ("verdict", "left"),
+    ):
         table.add_column(heading, justify=justify, no_wrap=heading != "verdict", overflow="ellipsis")  # type: ignore[arg-type]
     for net in document.nets:
         found = net.impedance_ohm
         ohms = [f"{found.min:.1f}", f"{found.mean:.1f}", f"{found.max:.1f}"] if found else ["", "", ""]
         delay = "" if net.delay_ps is None else f"{net.delay_ps:.1f}"
-        table.add_row(clean(net.name), clean(net.net_class), target(net), *ohms, f"{net.length_mm:.2f}", delay, net_verdict(net, by_net[net.name]))
+        table.add_row(
+            clean(net.name), clean(net.net_class), target(net), *ohms, f"{net.length_mm:.2f}", delay, net_verdict(net, by_net[net.name])
+        )
     return table
 
 
@@ -85,7 +102,14 @@ def print_finding(screen: Console, finding: FindingPart) -> None:
     where = f" on {finding.layer}" if finding.layer else ""
     along = "" if finding.along_mm is None else f", {finding.along_mm[0]:.2f} to {finding.along_mm[1]:.2f} mm along"
     waived = "" if finding.waived is None else f"   waived: {clean(finding.waived.reason)}"
-    screen.print(Text.assemble((finding.level.upper(), STYLE[finding.level]), f" {finding.rule}  ", (clean(finding.net), "bold"), f"{where} at {place}{along}{waived}"))
+    screen.print(
+        Text.assemble(
+            (finding.level.upper(), STYLE[finding.level]),
+            f" {finding.rule}  ",
+            (clean(finding.net), "bold"),
+            f"{where} at {place}{along}{waived}",
+        )
+    )
     screen.print(Padding(Text(clean(finding.message)), (0, 0, 0, 6)))
     if finding.measured is not None and finding.limit is not None:
         unit = f" {finding.unit}" if finding.unit else ""
@@ -102,7 +126,12 @@ def print_remarks(screen: Console, remarks: list[RemarkPart]) -> None:
         where = f"{remark.file}:{remark.line}: " if remark.line else f"{remark.file}: " if remark.file else ""
         screen.print(Padding(Text.assemble((f"{REMARK_WORDS[remark.kind]}: ", "dim"), clean(where + remark.text)), (0, 0, 0, 2)))
     if len(remarks) > REMARKS_SHOWN:
-        screen.print(Padding(Text(f"and {count(len(remarks) - REMARKS_SHOWN, 'remark')} more in the result file (-o FILE.json)", style="dim"), (0, 0, 0, 2)))
+        screen.print(
+            Padding(
+                Text(f"and {count(len(remarks) - REMARKS_SHOWN, 'remark')} more in the result file (-o FILE.json)", style="dim"),
+                (0, 0, 0, 2),
+            )
+        )
     screen.print()
 
 
@@ -119,7 +148,9 @@ def verdict(document: Document) -> Text:
 
 def print_seconds(seconds: dict[str, float]) -> None:
     """Prints how long each step took."""
-    console().print(Text("  ".join(f"{name} {value:.2f} s" for name, value in seconds.items()) + f"  all {sum(seconds.values()):.2f} s", style="dim"))
+    console().print(
+        Text("  ".join(f"{name} {value:.2f} s" for name, value in seconds.items()) + f"  all {sum(seconds.values()):.2f} s", style="dim")
+    )
 
 
 def count(number: int, word: str) -> str:

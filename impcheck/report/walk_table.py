@@ -24,13 +24,22 @@ def print_walk(document: Document, name: str) -> None:
     screen = console()
     aim = f", target {target(net)} ohm" if net.target_ohm else ""
     delay = f", {net.delay_ps:.1f} ps" if net.delay_ps is not None else ""
-    screen.print(Text.assemble((clean(net.name), "bold"), f"   class {clean(net.net_class)}{aim}, {net.status}, {net.length_mm:.3f} mm{delay}"))
+    screen.print(
+        Text.assemble((clean(net.name), "bold"), f"   class {clean(net.net_class)}{aim}, {net.status}, {net.length_mm:.3f} mm{delay}")
+    )
     if net.reason:
         screen.print(Text(clean(net.reason)))
     screen.print(Padding(stretch_table(net), (1, 0, 1, 2)))
     for via in net.vias:
-        near = "no return via needed or found" if via.return_via_mm is None else f"return via {via.return_via_mm:.2f} mm away"
-        screen.print(Padding(Text(f"via {clean(via.start)} to {clean(via.end)} at ({via.at[0]:.3f}, {via.at[1]:.3f}), stub {via.stub_mm:.2f} mm, {near}"), (0, 0, 0, 2)))
+        joint = "no return via needed or found" if via.return_via_mm is None else f"return via {via.return_via_mm:.2f} mm away"
+        screen.print(
+            Padding(
+                Text(
+                    f"via {clean(via.start)} to {clean(via.end)} at ({via.at[0]:.3f}, {via.at[1]:.3f}), stub {via.stub_mm:.2f} mm, {joint}"
+                ),
+                (0, 0, 0, 2),
+            )
+        )
     found = [finding for finding in document.findings if finding.net == name]
     screen.print(count(len(found), "finding"))
     for finding in found:

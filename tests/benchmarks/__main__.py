@@ -1,7 +1,9 @@
-"""How long the check takes, as ratios to gerbonara parsing the same files in the same run. `python -m tests.benchmarks [--tiles 1 2 4 8]`.
+"""How long the check takes, as ratios to gerbonara parsing the same files in the same run. `python -m tests.benchmarks [--tiles 1 2 4
+8]`.
 
-Prints, for a board of ten copper layers, 40,000 objects and 100 declared nets (and for 2, 4, 8 times that board where asked for), the time of every
-step over the time gerbonara takes to parse the same files, the growth from size to size, and the peak memory. Nothing is judged: read it.
+Prints, for a board of ten copper layers, 40,000 objects and 100 declared nets (and for 2, 4, 8 times that board where asked for), the
+time of every step over the time gerbonara takes to parse the same files, the growth from size to size, and the peak memory. Nothing is
+judged: read it.
 """
 
 from __future__ import annotations
@@ -47,7 +49,19 @@ def one(board: Path) -> None:
     summary = checked.document.summary
     peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024
     sections = checked.counts
-    print(json.dumps({"seconds": checked.seconds, "all": whole, "peak_mb": peak, "walked": summary.walked, "nets": summary.nets, "findings": len(checked.document.findings), **sections}))
+    print(
+        json.dumps(
+            {
+                "seconds": checked.seconds,
+                "all": whole,
+                "peak_mb": peak,
+                "walked": summary.walked,
+                "nets": summary.nets,
+                "findings": len(checked.document.findings),
+                **sections,
+            }
+        )
+    )
 
 
 def main() -> None:
@@ -70,10 +84,15 @@ def main() -> None:
                 yardstick = min(yardstick, parse_with_gerbonara(board.parent / "fab")[0])
             runs = []
             for _ in range(chosen.repeat):
-                done = subprocess.run([sys.executable, "-m", "tests.benchmarks", "--one", str(board)], check=True, capture_output=True, text=True)
+                done = subprocess.run(
+                    [sys.executable, "-m", "tests.benchmarks", "--one", str(board)], check=True, capture_output=True, text=True
+                )
                 runs.append(json.loads(done.stdout))
             best = min(runs, key=lambda found: found["all"])
-            print(f"{tiles} x: {objects} objects, {best['walked']} of {best['nets']} nets walked, {best['findings']} findings, {best.get('stations')} stations, {best.get('sections')} sections")
+            print(
+                f"{tiles} x: {objects} objects, {best['walked']} of {best['nets']} nets walked, "
+                f"{best['findings']} findings, {best['stations']} stations"
+            )
             print(f"  gerbonara parses in {yardstick:.2f} s; ratios to that:")
             for name, value in (*best["seconds"].items(), ("all", best["all"])):
                 aim = f"   (target {TARGETS[name]})" if name in TARGETS else ""

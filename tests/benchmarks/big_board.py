@@ -1,8 +1,9 @@
-"""A large invented board for the benchmark. In: a folder and a size; out: Gerber, Excellon, netlist and board file of 10 layers. Shares no code with impcheck.
+"""A large invented board for the benchmark. In: a folder and a size; out: Gerber, Excellon, netlist and board file of 10 layers. Shares
+no code with impcheck.
 
-One tile holds 100 declared nets in lanes (a pad, a microstrip, a via, a stripline with jogs, a via, a pad, each with its return vias), about 2,600 foreign
-vias between the lanes and in two ball grid fields, whose antipads perforate five planes, and short foreign traces on every signal layer: a little over
-40,000 objects. A board of n tiles is n times that.
+One tile holds 100 declared nets in lanes (a pad, a microstrip, a via, a stripline with jogs, a via, a pad, each with its return vias),
+about 2,600 foreign vias between the lanes and in two ball grid fields, whose antipads perforate five planes, and short foreign traces
+on every signal layer: a little over 40,000 objects. A board of n tiles is n times that.
 """
 
 from __future__ import annotations
@@ -91,7 +92,8 @@ def record(net: str, part: str, pin: str, x: float, y: float, drill: float, acce
     """One IPC-D-356 record in thousandths of a millimetre."""
     hole = f"D{round(drill * 1000):04d}P" if drill else " " * 6
     code = "317" if drill else "327"
-    return f"{code}{net[:14]:<14}   {part[:6]:<6}{'-' + pin[:4] if pin else '':<5} {hole}A{access:02d}X{round(x * 1000):+07d}Y{round(y * 1000):+07d}X{400:04d}Y{400:04d}R000S0"
+    place = f"X{round(x * 1000):+07d}Y{round(y * 1000):+07d}X0400Y0400R000S0"
+    return f"{code}{net[:14]:<14}   {part[:6]:<6}{'-' + pin[:4] if pin else '':<5} {hole}A{access:02d}{place}"
 
 
 def tile(big: Big, number: int, x0: float, y0: float, rng: random.Random) -> None:
@@ -191,5 +193,9 @@ def board_file(big: Big) -> str:
             lines.append(f"  - {{dielectric: {round(DIELECTRIC[index] * 1000)}um, er: 4.0, loss_tangent: 0.015}}")
     lines += ["  - {mask: 20um, er: 3.6}", "returns: [GND, VDD]", "classes:"]
     widths = ", ".join(f"L{layer + 1}: {width}mm" for layer, width in WIDTH.items())
-    lines += [f"  bus: {{impedance: 50 ohm, tolerance: 15%, rise_time: 300ps, width: {{{widths}}}}}", "nets:", '  - {net: "SIG*", class: bus}']
+    lines += [
+        f"  bus: {{impedance: 50 ohm, tolerance: 15%, rise_time: 300ps, width: {{{widths}}}}}",
+        "nets:",
+        '  - {net: "SIG*", class: bus}',
+    ]
     return "\n".join(lines) + "\n"

@@ -1,4 +1,5 @@
-"""An abstract board: what a layout tool knows before it writes fabrication files. In: shapes added in mm; out: lists the writers draw. Shares no code with impcheck."""
+"""An abstract board: what a layout tool knows before it writes fabrication files. In: shapes added in mm; out: lists the writers draw.
+Shares no code with impcheck."""
 
 from __future__ import annotations
 
@@ -243,13 +244,15 @@ def moved(board: Board, move: Move) -> Board:
         outline=move.points(board.outline),
         traces=[replace(t, points=move.points(t.points)) for t in board.traces],
         arcs=[
-            replace(a, start=move.point(a.start), end=move.point(a.end), centre=move.point(a.centre), ccw=a.ccw != move.mirror) for a in board.arcs
+            replace(a, start=move.point(a.start), end=move.point(a.end), centre=move.point(a.centre), ccw=a.ccw != move.mirror)
+            for a in board.arcs
         ],
         pads=[replace(p, at=move.point(p.at), rotation=move.angle(p.rotation)) for p in board.pads],
         vias=[replace(v, at=move.point(v.at)) for v in board.vias],
         holes=[replace(h, at=move.point(h.at), end=None if h.end is None else move.point(h.end)) for h in board.holes],
         planes=[
-            replace(p, outline=move.points(p.outline), cuts=tuple(replace(c, points=move.points(c.points)) for c in p.cuts)) for p in board.planes
+            replace(p, outline=move.points(p.outline), cuts=tuple(replace(c, points=move.points(c.points)) for c in p.cuts))
+            for p in board.planes
         ],
         fills=[replace(f, points=move.points(f.points)) for f in board.fills],
         silk=[(side, width, move.points(points)) for side, width, points in board.silk],

@@ -1,4 +1,5 @@
-"""Parts as pads and silk. In: a board, a name, a place in mm, nets by pin; out: pads, holes and silk added to the board. Shares no code with impcheck."""
+"""Parts as pads and silk. In: a board, a name, a place in mm, nets by pin; out: pads, holes and silk added to the board. Shares no code
+with impcheck."""
 
 from __future__ import annotations
 
@@ -28,8 +29,20 @@ def chip(board: Board, name: str, at: Point, turn: float, nets: Sequence[str], s
     _frame(board, 0 if layer == 0 else 1, at, turn, 2 * pitch + along + 0.3, across + 0.3)
 
 
-def rows(board: Board, name: str, at: Point, turn: float, nets: Mapping[int, str], count: int, pitch: float, span: float, pad: tuple[float, float], layer: int = 0) -> None:
-    """A two-row package: pins 1.. down the left side, on up the right side. `span`: distance of the pad centres across. Pins that are in no net get one of their own."""
+def rows(
+    board: Board,
+    name: str,
+    at: Point,
+    turn: float,
+    nets: Mapping[int, str],
+    count: int,
+    pitch: float,
+    span: float,
+    pad: tuple[float, float],
+    layer: int = 0,
+) -> None:
+    """A two-row package: pins 1.. down the left side, on up the right side. `span`: distance of the pad centres across. Pins that are
+    in no net get one of their own."""
     half = count // 2
     for k in range(count):
         left = k < half
@@ -41,7 +54,18 @@ def rows(board: Board, name: str, at: Point, turn: float, nets: Mapping[int, str
     board.silk.append((side, 0.25, (_turn(at, (-span / 2 - pad[0] / 2 - 0.3, (half - 1) / 2 * pitch), turn),)))
 
 
-def quad(board: Board, name: str, at: Point, turn: float, nets: Mapping[int, str], count: int, pitch: float, span: float, pad: tuple[float, float], belly: float = 0.0) -> None:
+def quad(
+    board: Board,
+    name: str,
+    at: Point,
+    turn: float,
+    nets: Mapping[int, str],
+    count: int,
+    pitch: float,
+    span: float,
+    pad: tuple[float, float],
+    belly: float = 0.0,
+) -> None:
     """A four-sided package, pin 1 at the top of the left side, counter-clockwise. `belly`: side of a middle pad on net GND, 0 none."""
     per = count // 4
     for k in range(count):
@@ -66,7 +90,17 @@ def grid(board: Board, name: str, at: Point, nets: Mapping[str, str], columns: i
     _frame(board, 0, at, 0, columns * pitch + 1, lines * pitch + 1)
 
 
-def header(board: Board, name: str, at: Point, turn: float, nets: Sequence[str], pitch: float = 2.54, rows_: int = 1, plane_net: Iterable[str] = ("GND",), inner: tuple[int, ...] = ()) -> None:
+def header(
+    board: Board,
+    name: str,
+    at: Point,
+    turn: float,
+    nets: Sequence[str],
+    pitch: float = 2.54,
+    rows_: int = 1,
+    plane_net: Iterable[str] = ("GND",),
+    inner: tuple[int, ...] = (),
+) -> None:
     """Through-hole pins in one or two rows; those on a plane net get thermal reliefs."""
     columns = len(nets) // rows_
     for k, net in enumerate(nets):

@@ -1,4 +1,5 @@
-"""Connects the surroundings of a sample board. In: a board with pads and reserved places; out: thin traces and vias added so that every net hangs together. Shares no code with impcheck."""
+"""Connects the surroundings of a sample board. In: a board with pads and reserved places; out: thin traces and vias added so that every
+net hangs together. Shares no code with impcheck."""
 
 from __future__ import annotations
 
@@ -21,7 +22,14 @@ CLEARANCE = 0.15
 class Router:
     """A maze router on two layers with a grid of 0.2 mm. Nets in `plane_nets` go to their plane by a via beside each pad."""
 
-    def __init__(self, board: Board, layers: tuple[int, ...], plane_nets: Iterable[str], width: float = 0.15, via: tuple[float, float, float] = (0.25, 0.5, 0.75)) -> None:
+    def __init__(
+        self,
+        board: Board,
+        layers: tuple[int, ...],
+        plane_nets: Iterable[str],
+        width: float = 0.15,
+        via: tuple[float, float, float] = (0.25, 0.5, 0.75),
+    ) -> None:
         self.board, self.layers, self.width, self.via = board, layers, width, via
         self.plane_nets = set(plane_nets)
         self.x0, self.y0, x1, y1 = board.extent()
@@ -93,7 +101,9 @@ class Router:
     def point(self, cell: tuple[int, int]) -> Point:
         return round(self.x0 + cell[0] * STEP, 6), round(self.y0 + cell[1] * STEP, 6)
 
-    def search(self, net: str, starts: list[tuple[int, int, int]], goals: set[tuple[int, int, int]], any_via: bool = False) -> list[tuple[int, int, int]] | None:
+    def search(
+        self, net: str, starts: list[tuple[int, int, int]], goals: set[tuple[int, int, int]], any_via: bool = False
+    ) -> list[tuple[int, int, int]] | None:
         """Cheapest way from the starts to a goal; with `any_via` to any place where a via of the net may stand."""
         own = self.number(net)
         free = {layer: (self.owner[layer, False] == 0) | (self.owner[layer, False] == own) for layer in self.layers}
@@ -170,7 +180,9 @@ class Router:
     def cells_in(self, layer: int, shape: BaseGeometry) -> list[tuple[int, int, int]]:
         i0, j0 = self.index((shape.bounds[0], shape.bounds[1]))
         i1, j1 = self.index((shape.bounds[2], shape.bounds[3]))
-        cells = [(layer, i, j) for i in range(max(i0, 0), min(i1 + 1, self.shape[0])) for j in range(max(j0, 0), min(j1 + 1, self.shape[1]))]
+        cells = [
+            (layer, i, j) for i in range(max(i0, 0), min(i1 + 1, self.shape[0])) for j in range(max(j0, 0), min(j1 + 1, self.shape[1]))
+        ]
         inner = shape.buffer(-0.02)
         good = [cell for cell in cells if inner.covers(shapely.Point(self.point(cell[1:])))]
         centre = shape.centroid
@@ -226,5 +238,3 @@ def straightened(points: list[Point]) -> tuple[Point, ...]:
         if abs(cross) > 1e-9:
             kept.append(here)
     return (*kept, points[-1])
-
-

@@ -1,4 +1,5 @@
-"""Copper of an abstract board as shapely polygons, and whether its nets hang together. In: Board; out: polygons per layer in mm, faults as text. Shares no code with impcheck."""
+"""Copper of an abstract board as shapely polygons, and whether its nets hang together. In: Board; out: polygons per layer in mm, faults
+as text. Shares no code with impcheck."""
 
 from __future__ import annotations
 

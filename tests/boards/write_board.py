@@ -1,4 +1,5 @@
-"""Writes a board as the folder a user has: board.yaml and fabrication files. In: Board and a Dialect; out: files. Shares no code with impcheck."""
+"""Writes a board as the folder a user has: board.yaml and fabrication files. In: Board and a Dialect; out: files. Shares no code with
+impcheck."""
 
 from __future__ import annotations
 
@@ -345,7 +346,12 @@ def stackup_line(item: Layer, file: str = "") -> str:
 
 def board_yaml(board: Board, dialect: Dialect, fab: FabWriter, drills: list[str], heading: str = "") -> str:
     """The board file as a user would write it."""
-    lines = [*(f"# {line}" for line in heading.splitlines()), "impcheck: 1", f"board: {board.name}", f"files: {'fab.zip' if dialect.archive else 'fab'}"]
+    lines = [
+        *(f"# {line}" for line in heading.splitlines()),
+        "impcheck: 1",
+        f"board: {board.name}",
+        f"files: {'fab.zip' if dialect.archive else 'fab'}",
+    ]
     if dialect.names == "netlist":
         lines.append(f"netlist: {dialect.stem}.ipc")
     lines += [f"outline: {fab.name('edge', 'GKO')}", "stackup:  # top to bottom, as the fab house quoted it"]
@@ -384,7 +390,9 @@ def job_file(board: Board, fab: FabWriter) -> str:
     for item in board.stackup:
         if item.kind == "mask":
             side = "Top" if masks == 0 else "Bottom"
-            materials.append({"Type": "SolderMask", "Thickness": item.thickness / 1000, "DielectricConstant": item.er, "Name": f"{side} solder mask"})
+            materials.append(
+                {"Type": "SolderMask", "Thickness": item.thickness / 1000, "DielectricConstant": item.er, "Name": f"{side} solder mask"}
+            )
             masks += 1
         elif item.kind == "copper":
             materials.append({"Type": "Copper", "Thickness": item.thickness / 1000, "Name": item.name})
@@ -400,7 +408,11 @@ def job_file(board: Board, fab: FabWriter) -> str:
                     "Name": item.name or f"{board.coppers[coppers - 1].name}/{board.coppers[coppers].name}",
                 }
             )
-    files = [{"Path": path, "FileFunction": use, "FilePolarity": "Positive"} for path, use in sorted(fab.functions.items()) if path.endswith(".gbr")]
+    files = [
+        {"Path": path, "FileFunction": use, "FilePolarity": "Positive"}
+        for path, use in sorted(fab.functions.items())
+        if path.endswith(".gbr")
+    ]
     for entry in files:
         if "FilePolarity,Negative" in fab.files[entry["Path"]]:
             entry["FilePolarity"] = "Negative"

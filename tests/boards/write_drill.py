@@ -19,7 +19,8 @@ class Drilled:
 
 
 def excellon(holes: list[Drilled], unit: str = "mm", zeros: str = "decimal", function: tuple[str, ...] = (), routed: bool = False) -> str:
-    """`zeros`: decimal (points written), LZ (leading zeros kept), TZ (trailing zeros kept). `function`: X2 file function written as a comment."""
+    """`zeros`: decimal (points written), LZ (leading zeros kept), TZ (trailing zeros kept). `function`: X2 file function written as a
+    comment."""
     per = 25.4 if unit == "inch" else 1.0
     whole, decimals = (2, 4) if unit == "inch" else (3, 3)
 

@@ -1,4 +1,5 @@
-"""Writes Gerber text. In: strokes, arcs, flashes and polygons in mm, with names; out: one file as text, in mm or inches, with or without X2 attributes. Shares no code with impcheck."""
+"""Writes Gerber text. In: strokes, arcs, flashes and polygons in mm, with names; out: one file as text, in mm or inches, with or
+without X2 attributes. Shares no code with impcheck."""
 
 from __future__ import annotations
 
@@ -23,7 +24,10 @@ class Gerber:
         self.head: list[str] = []
         if remark:
             self.head.append(f"G04 {remark}*")
-        self.head += [f"%FSLAX{4 if unit == 'mm' else 2}{digits}Y{4 if unit == 'mm' else 2}{digits}*%", f"%MO{'MM' if unit == 'mm' else 'IN'}*%"]
+        self.head += [
+            f"%FSLAX{4 if unit == 'mm' else 2}{digits}Y{4 if unit == 'mm' else 2}{digits}*%",
+            f"%MO{'MM' if unit == 'mm' else 'IN'}*%",
+        ]
         self.definitions: list[str] = []
         self.body: list[str] = []
         self.apertures: dict[tuple[str, str], int] = {}
@@ -147,7 +151,14 @@ class Gerber:
         elif pad.shape == "obround":
             if h > w:
                 w, h, turn = h, w, turn + 90
-            self.macro("CAPSULE", "0 turned obround: width, straight half, angle", "$4=0-$2", "20,1,$1,$4,0,$2,0,$3", "1,1,$1,$4,0,$3", "1,1,$1,$2,0,$3")
+            self.macro(
+                "CAPSULE",
+                "0 turned obround: width, straight half, angle",
+                "$4=0-$2",
+                "20,1,$1,$4,0,$2,0,$3",
+                "1,1,$1,$4,0,$3",
+                "1,1,$1,$2,0,$3",
+            )
             self.flash(pad.at, f"CAPSULE,{n(h)}X{n((w - h) / 2)}X{turn:.6f}", function)
         else:  # rounded rectangle: two crossed bars and four discs
             r = min(pad.size) / 4 + grow

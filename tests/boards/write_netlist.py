@@ -1,6 +1,7 @@
 """Writes an IPC-D-356A netlist. In: Board; out: the file as text, in 0.0001 inch or 0.001 mm. Shares no code with impcheck.
 
-Columns as IPC-D-356 gives them (from memory): 1-3 operation, 4-17 net, 21-26 part, 27 hyphen, 28-31 pin, 32 midpoint, 33-38 hole, 39-41 access, 42-57 place, 58-71 size, 73-74 mask.
+Columns as IPC-D-356 gives them (from memory): 1-3 operation, 4-17 net, 21-26 part, 27 hyphen, 28-31 pin, 32 midpoint, 33-38 hole, 39-41
+access, 42-57 place, 58-71 size, 73-74 mask.
 """
 
 from __future__ import annotations
@@ -32,14 +33,14 @@ def netlist(board: Board, unit: str = "inch") -> str:
         if net:
             access = 1 if pad.layer == 0 else board.last + 1
             body.append(
-                f"327{net:<14}   {pad.component:<6}-{pad.pin:<4}       A{access:02d}{place(pad.at)}{size(*pad.size, pad.rotation)} S{2 if pad.layer == 0 else 1}"
+                f"327{net:<14}   {pad.component:<6}-{pad.pin:<4}       A{access:02d}{place(pad.at)}{size(*pad.size, pad.rotation)} "
+                f"S{2 if pad.layer == 0 else 1}"
             )
     for via in board.vias:
         drill = f"D{round(via.drill / per):04d}P"
         if via.component:
             body.append(f"317{short(via.net):<14}   {via.component:<6}-{via.pin:<4} {drill}A00{place(via.at)}{size(via.pad, via.pad)} S0")
-        else:
-            if board.span(via) == (0, board.last):  # blind and buried vias are left to the copper
-                body.append(f"317{short(via.net):<14}   {'VIA':<6}-{'':<4}M{drill}A00{place(via.at)}{size(via.pad, via.pad)} S3")
+        elif board.span(via) == (0, board.last):  # blind and buried vias are left to the copper
+            body.append(f"317{short(via.net):<14}   {'VIA':<6}-{'':<4}M{drill}A00{place(via.at)}{size(via.pad, via.pad)} S3")
     lines += [f"P  {alias}  {net}" for net, alias in aliases.items()]
     return "\n".join([*lines, *body, "999", ""])

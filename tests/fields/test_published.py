@@ -1,4 +1,5 @@
-"""The solver against closed forms and published formulas. Each case says its kind and source; tolerances are the claim of the source or of the design.
+"""The solver against closed forms and published formulas. Each case says its kind and source; tolerances are the claim of the source or
+of the design.
 
 Coordinates in mm. Elliptic integrals from scipy; eta0 from scipy.constants.
 """
@@ -36,7 +37,9 @@ def bar(name, low, high, bottom, top, role="signal"):
 def circle(x, y, radius, sides=256, begin=0.0, end=2 * math.pi):
     """A regular polygon with the circle's area, so that its capacitance is the circle's to second order."""
     grown = radius * math.sqrt(2 * math.pi / sides / math.sin(2 * math.pi / sides))
-    return [(x + grown * math.cos(t), y + grown * math.sin(t)) for t in np.linspace(begin, end, sides + 1)[: sides if end - begin > 6 else None]]
+    return [
+        (x + grown * math.cos(t), y + grown * math.sin(t)) for t in np.linspace(begin, end, sides + 1)[: sides if end - begin > 6 else None]
+    ]
 
 
 @pytest.mark.parametrize("ratio", [1.5, 3.0, 10.0])
@@ -51,7 +54,7 @@ def test_coaxial_line(ratio):
     # exact: Z0 = eta0 / (2 pi) ln(b / a); the outer conductor is two half rings at 0 V
     halves = []
     for begin in (-math.pi / 2, math.pi / 2):
-        inner = circle(0, 0, ratio * 0.1, 128, begin, begin + math.pi)[:: 1]
+        inner = circle(0, 0, ratio * 0.1, 128, begin, begin + math.pi)[::1]
         outer = circle(0, 0, ratio * 0.1 + 0.1, 32, begin, begin + math.pi)
         halves.append(Conductor("shield", "return", (*inner, *outer[::-1])))
     section = Section((), (Conductor("s", "signal", tuple(circle(0, 0, 0.1, 64))), *halves))
@@ -141,10 +144,23 @@ def test_microstrip_against_scikit_rf():
     frequency = skrf.Frequency(1e6, 2e6, 2, unit="Hz")
     with warnings.catch_warnings():
         warnings.simplefilter("ignore")
-        media = skrf.media.MLine(frequency, w=0.19e-3, h=0.11e-3, t=0.042e-3, ep_r=4.0, tand=0, rho=1e-12, model="hammerstadjensen", disp="none", diel="frequencyinvariant")
+        media = skrf.media.MLine(
+            frequency,
+            w=0.19e-3,
+            h=0.11e-3,
+            t=0.042e-3,
+            ep_r=4.0,
+            tand=0,
+            rho=1e-12,
+            model="hammerstadjensen",
+            disp="none",
+            diel="frequencyinvariant",
+        )
         other = float(np.real(media.z0_characteristic[0]))
     section = Section((Slab(0, 0.11, 4.0),), (bar("s", -0.095, 0.095, 0.11, 0.152),), planes=(0.0,))
-    assert solve(section).z0 == pytest.approx(other, rel=0.015)  # its thickness correction is an approximation of about 1 % (common practice)
+    assert solve(section).z0 == pytest.approx(
+        other, rel=0.015
+    )  # its thickness correction is an approximation of about 1 % (common practice)
 
 
 def test_delay_is_that_of_light():

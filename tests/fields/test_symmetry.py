@@ -1,4 +1,5 @@
-"""What must hold of every section whatever its numbers: symmetries, limits, refusals. Exact, so the tolerances are round-off or the solver's own error."""
+"""What must hold of every section whatever its numbers: symmetries, limits, refusals. Exact, so the tolerances are round-off or the
+solver's own error."""
 
 from __future__ import annotations
 
@@ -116,8 +117,14 @@ def test_floating_copper_is_between_none_and_grounded():
 
 
 REFUSED = {
-    "touches": (Section((), (trapezoid("s", 0, 1, 1, 2, 0), trapezoid("g", 1, 2, 1, 2, 0, "return")), (0.0,)), "conductor 's' touches copper at 0 V"),
-    "overlaps": (Section((), (trapezoid("p", 0, 1, 1, 2, 0), trapezoid("n", 0.5, 2, 1, 2, 0)), (0.0,)), "conductor 'p' touches conductor 'n'"),
+    "touches": (
+        Section((), (trapezoid("s", 0, 1, 1, 2, 0), trapezoid("g", 1, 2, 1, 2, 0, "return")), (0.0,)),
+        "conductor 's' touches copper at 0 V",
+    ),
+    "overlaps": (
+        Section((), (trapezoid("p", 0, 1, 1, 2, 0), trapezoid("n", 0.5, 2, 1, 2, 0)), (0.0,)),
+        "conductor 'p' touches conductor 'n'",
+    ),
     "on the plane": (Section((), (trapezoid("s", 0, 1, 0, 1, 0),), (0.0,)), "conductor 's' touches the plane"),
     "no return": (Section((), (trapezoid("s", 0, 1, 1, 2, 0),)), "nothing carries the return current"),
     "no signal": (Section((), (trapezoid("g", 0, 1, 1, 2, 0, "return"),), (0.0,)), "no signal"),
