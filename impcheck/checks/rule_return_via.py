@@ -51,7 +51,8 @@ def check(track: Track, limits: Limits, context: Context) -> Iterator[Finding]:
         )
         text = (
             f"from {context.layer(via.entered)} to {context.layer(via.left)} the return current changes from "
-            f"{_words(change.before, context)} to {_words(change.after, context)}, and {nearest}: put a {what} between them within {reach:.2f} mm of here"
+            f"{_words(change.before, context)} to {_words(change.after, context)}, and "
+            f"{nearest}: put a {what} between them within {reach:.2f} mm of here"
         )
         yield Finding(
             RULE,

@@ -20,6 +20,7 @@ from impcheck.fields.kernels import gauss
 
 Floats = NDArray[np.float64]
 SUBPANELS = 4
+TIE = 1e-6  # relative: sizes this near are equal, so that round-off decides nothing
 SMALLEST = 1e-6  # mm, no panel is cut shorter
 RATIO = 5.1  # of neighbouring sub-panels: their ends never fall on a collocation point
 
@@ -125,19 +126,22 @@ def _cuts(a: complex, b: complex, corners: NDArray[np.complex128], grading: Grad
         return min(grading.corner * nearest, length / 2)
 
     left, right = first(0.0), first(length)
-    if left + right >= 0.8 * length:
+    if left + right >= 0.8 * length * (1 - TIE):
         share = left / (left + right)
         return [0.0, share * length, length]
     low, high = [0.0, left], [length, length - right]
     sizes = [left, right]
     while True:
         rest = high[-1] - low[-1]
-        side = 0 if sizes[0] <= sizes[1] else 1
-        size = grading.growth * sizes[side]
-        if rest <= 1.3 * size:
+        size = grading.growth * min(sizes)
+        both = abs(sizes[0] - sizes[1]) < TIE * size  # a segment and its mirror image are cut alike
+        if rest <= 1.3 * size * (2 if both else 1) * (1 + TIE):
             break
-        sizes[side] = size
-        (low if side == 0 else high).append(low[-1] + size if side == 0 else high[-1] - size)
+        if both or sizes[0] < sizes[1]:
+            low.append(low[-1] + size)
+        if both or sizes[1] < sizes[0]:
+            high.append(high[-1] - size)
+        sizes = [size if both or value == min(sizes) else value for value in sizes]
     cuts = low + high[::-1]
     done: list[float] = [cuts[0]]
     for index, (p, r) in enumerate(pairwise(cuts)):
@@ -147,7 +151,7 @@ def _cuts(a: complex, b: complex, corners: NDArray[np.complex128], grading: Grad
                 split = []
                 for lo, hi in pieces:
                     gap = np.abs(others - np.clip(others.real, lo, hi))
-                    if hi - lo > max(grading.near * float(gap.min()), SMALLEST):
+                    if hi - lo > max(grading.near * float(gap.min()) * (1 + TIE), SMALLEST):
                         split += [(lo, (lo + hi) / 2), ((lo + hi) / 2, hi)]
                     else:
                         split.append((lo, hi))

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from itertools import pairwise
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 import shapely

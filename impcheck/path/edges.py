@@ -16,6 +16,7 @@ from impcheck.copper.copper import LayerCopper
 
 MAX_WINDOW = 1.0  # mm, longest window
 CHUNK = 12  # edges that share one box of the spatial index
+ROUNDING = 1e-9  # mm
 
 
 @dataclass(frozen=True)
@@ -136,7 +137,8 @@ class LayerEdges:
         window = np.repeat(window, size)
         reach = windows.reach[window]
         keep = (np.minimum(t0, t1) <= reach) & (np.maximum(t0, t1) >= -reach)
-        keep &= (np.minimum(s0, s1) <= windows.length[window]) & (np.maximum(s0, s1) >= 0)
+        # A vertex at the very end of a window may lie a rounding error outside it, and one of its two edges must stay.
+        keep &= (np.minimum(s0, s1) <= windows.length[window] + ROUNDING) & (np.maximum(s0, s1) >= -ROUNDING)
         window, edge = window[keep], edge[keep]
         solid_window, solid_piece = self._solid(windows, boxes, window, self.piece[edge])
         return LocalEdges(window, self.piece[edge], s0[keep], t0[keep], s1[keep], t1[keep], self.turn[edge], solid_window, solid_piece)
