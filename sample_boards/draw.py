@@ -8,6 +8,7 @@ with impcheck.
 
 from __future__ import annotations
 
+import json
 import shutil
 from pathlib import Path
 
@@ -361,7 +362,7 @@ def expected(labels: list[Label]) -> str:
             f"    net: {label.net}",
             f"    layer: {label.layer}",
             f"    at: [{label.at[0]:g}, {label.at[1]:g}]",
-            f"    why: {label.why}",
+            f"    why: {json.dumps(label.why)}",
         ]
     return "\n".join([*lines, ""])
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections import Counter, defaultdict
 
+import numpy as np
 import shapely
 
 from impcheck.artwork.image import Kind
@@ -35,6 +36,22 @@ class _Search:
             self.pins[pin.label, pin.net].append(pin)
         numbers = {(pin.component, pin.number) for pin in evidence.pins if pin.component}
         self.pin_count = Counter(component for component, _ in numbers)
+
+    def nearest(self, one: int, other: int) -> tuple[tuple[float, float], int, float] | None:
+        """Where two labels come nearest on one layer: the middle between them, the layer, the distance in mm; None where they share no layer."""
+        best: tuple[float, int, tuple[float, float]] | None = None
+        for layer, (copper, labels) in enumerate(zip(self.copper.layers, self.finder.piece_label, strict=True)):
+            mine, others = copper.shape[labels == one], copper.shape[labels == other]
+            if len(mine) == 0 or len(others) == 0:
+                continue
+            (which, hit), distance = shapely.STRtree(mine).query_nearest(others, return_distance=True, all_matches=False)
+            nearest = int(np.argmin(distance))
+            middle = shapely.line_interpolate_point(shapely.shortest_line(others[which[nearest]], mine[hit[nearest]]), 0.5, normalized=True)
+            best = min(
+                best or (math.inf, 0, (0.0, 0.0)),
+                (float(distance[nearest]), layer, (float(shapely.get_x(middle)), float(shapely.get_y(middle)))),
+            )
+        return None if best is None else (best[2], best[1], best[0])
 
     def somewhere(self, label: int, name: str) -> Spot:
         """A place where a label bears a name."""
@@ -128,11 +145,15 @@ def _opens(search: _Search) -> list[NetFault]:
         attributes, netlist = search.evidence.attribute_names, search.evidence.netlist_names
         weight = {label: attributes.get(label, Counter())[name] + netlist.get(label, Counter())[name] for label in labels}
         main = max(labels, key=lambda label: (weight[label], -label))
-        (at, layer), told = min((_alone(search, label, name) for label in labels if label != main), key=lambda one: (one[0][0], one[1]))
+        (at, layer), told, alone = min(
+            ((*_alone(search, label, name), label) for label in labels if label != main), key=lambda one: (one[0][0], one[1])
+        )
         more = "" if len(labels) == 2 else f" ({len(labels)} separate pieces in all)"
-        rest = min(search.pins[main, name], key=lambda pin: math.dist(pin.at, at), default=None)
-        apart = "" if rest is None else f"; the nearest pin of the rest, {rest}, is {math.dist(rest.at, at):.2f} mm away"
-        text = f"net {name} is not one piece of copper: {told} stands alone{more}{apart}"
+        text = f"net {name} is not one piece of copper: {told} stands alone{more}"
+        break_at = search.nearest(main, alone)
+        if break_at is not None:
+            at, layer, gap = break_at
+            text += f"; it comes nearest to the rest here, {gap:.3f} mm away"
         found.append(NetFault("open", (name,), name in search.declared, False, at, layer, text))
     return found
 
