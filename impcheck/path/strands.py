@@ -17,6 +17,7 @@ from impcheck.path.regions import centrelines, pad_regions
 CHORD_ERROR = 0.001  # mm, of chopped arcs, as everywhere in the house
 FLANK = 0.005  # mm beside a stroke where the free-flank test looks
 PAINT_LENGTH = 2.0  # widths: a stroke shorter than this is never taken for paint
+REGISTRATION = 0.02  # mm between the centre of a pad and that of its hole in files that mean the same place
 
 
 @dataclass(frozen=True)
@@ -113,13 +114,17 @@ def gather(copper: Copper, nets: Nets) -> tuple[Strands, Pads]:
                 reached = (barrel_net == net) & (barrels.first <= sheet.index) & (barrels.last >= sheet.index)
                 holes = (barrels.start[reached] + barrels.end[reached]) / 2
                 parts.append(_on_layer(net, sheet, pieces, pin_points.get((net, sheet.index), []), holes, pads=pads))
+    centres, pad_net = np.array(pads.centre).reshape(-1, 2), np.array(pads.net, dtype=np.int64)
     for barrel in np.flatnonzero(barrel_net >= 0).tolist():
         middle = (barrels.start[barrel] + barrels.end[barrel]) / 2
+        # a drill file of few digits rounds its places: the barrel of a pad stands in its middle
+        away = np.where(pad_net == barrel_net[barrel], np.hypot(*(centres - middle).T), np.inf)
+        place = centres[np.argmin(away)] if len(away) and away.min() <= REGISTRATION else middle
         disc = shapely.LineString([barrels.start[barrel], barrels.end[barrel]]).buffer(barrels.diameter[barrel] / 2)
         if (barrels.start[barrel] == barrels.end[barrel]).all():
             disc = shapely.Point(middle).buffer(barrels.diameter[barrel] / 2)
         for level in range(int(barrels.first[barrel]), int(barrels.last[barrel]) + 1):
-            pads.add(int(barrel_net[barrel]), level, disc, tuple(middle), barrel=barrel)
+            pads.add(int(barrel_net[barrel]), level, disc, (float(place[0]), float(place[1])), barrel=barrel)
     return Strands.join(parts), pads
 
 
