@@ -1,6 +1,6 @@
 """Draws the sample boards: python -m sample_boards.draw, from the project's root, with the test extras installed.
 
-Four invented boards of one invented maker, Sedgeholm Gauges, whose river-ice gauge listens for the ice from a mast: the antenna board
+Five invented boards of one invented maker, Sedgeholm Gauges, whose river-ice gauge listens for the ice from a mast: the antenna board
 on the mast, the logger, the sampler, and the clock board. Each is written as a user would have it: a commented board.yaml, the
 fabrication files, and beside them expected.yaml, which lists the defects that were drawn into it and why each is one. Shares no code
 with impcheck.
@@ -12,6 +12,7 @@ import json
 import shutil
 from pathlib import Path
 
+from sample_boards.gauge_main import draw as gauge_main
 from tests.boards.model import Board, Cut, Declared, Fill, Hole, Label, Layer, Plane
 from tests.boards.parts import chip, coax, header, rows, serpentine, teardrop, via
 from tests.boards.write_board import Dialect, write_board
@@ -383,6 +384,11 @@ BOARDS = {
             drill_zeros="TZ",
         ),
         "Logger board of the river-ice gauge. Plain Gerber in inches; nets and pins come from the IPC-D-356 netlist.",
+    ),
+    "ice-main": (
+        gauge_main,
+        Dialect("ice-main", "inch", 6, "netlist", {-1: "strokes"}, {-1: "clear"}, drill_unit="inch", drill_zeros="TZ"),
+        "Main board of the river-ice gauge, dense. Plain Gerber in inches, planes dark and clear; nets and pins come from the IPC-D-356 netlist.",
     ),
     "ice-sampler": (
         sampler,
