@@ -388,7 +388,7 @@ BOARDS = {
     "ice-main": (
         gauge_main,
         Dialect("ice-main", "inch", 6, "netlist", {-1: "strokes"}, {-1: "clear"}, drill_unit="inch", drill_zeros="TZ"),
-        "Main board of the river-ice gauge, dense. Plain Gerber in inches, planes dark and clear; nets and pins come from the IPC-D-356 netlist.",
+        "Main board of the river-ice gauge, dense. Plain Gerber in inches, planes dark and clear; nets and pins come from the netlist.",
     ),
     "ice-sampler": (
         sampler,

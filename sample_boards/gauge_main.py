@@ -1,4 +1,5 @@
-"""The river-ice gauge's main board: four layers, microstrips over a ground plane with a slot and over split rails. In: nothing; out: Board and its labels, mm."""
+"""The river-ice gauge's main board: four layers, microstrips over a ground plane with a slot and over split rails. In: nothing; out:
+Board and its labels, mm."""
 
 from __future__ import annotations
 
@@ -177,8 +178,8 @@ def route_controlled(board: Board) -> list[str]:
 
 def spoil(board: Board) -> list[Label]:
     """Builds in the defects."""
-    fat = [t for t in board.traces if t.net == "FLASH_MOSI"][0]
-    board.traces.remove(fat)
+    old = next(t for t in board.traces if t.net == "FLASH_MOSI")
+    board.traces.remove(old)
     board.trace("FLASH_MOSI", 0, WIDTH, (24, 27.2), (27, 27.2), (38.435, 38.635), (46, 38.635))
     board.trace("FLASH_MOSI", 0, 0.3, (46, 38.635), (49.2, 38.635))
     board.trace("FLASH_MOSI", 0, WIDTH, (49.2, 38.635), (53.3, 38.635))

@@ -1,4 +1,5 @@
-"""What the sample boards share: corridors kept free beside controlled traces, stitching vias, outlines. In: boards under construction; out: shapes in mm added to them."""
+"""What the sample boards share: corridors kept free beside controlled traces, stitching vias, outlines. In: boards under construction;
+out: shapes in mm added to them."""
 
 from __future__ import annotations
 
@@ -29,7 +30,8 @@ def keep_free(router: Router, board: Board, nets: Iterable[str], beside: float, 
 
 
 def stitch(board: Board, net: str, pitch: float, layers: Iterable[int], away: float, corridors: float, controlled: Iterable[str]) -> None:
-    """Vias of a net on a raster wherever nothing else is near: `away` from foreign copper, `corridors` from the middle of controlled traces."""
+    """Vias of a net on a raster wherever nothing else is near: `away` from foreign copper, `corridors` from the middle of controlled
+    traces."""
     wanted = set(controlled)
     blocked = []
     for t in board.traces:

@@ -1,4 +1,5 @@
-"""The same board drawn otherwise gives the same findings: units, strokes or regions, planes of all kinds, turned, mirrored, moved, other sources of names."""
+"""The same board drawn otherwise gives the same findings: units, strokes or regions, planes of all kinds, turned, mirrored, moved,
+other sources of names."""
 
 from __future__ import annotations
 

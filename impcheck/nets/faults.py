@@ -38,7 +38,8 @@ class _Search:
         self.pin_count = Counter(component for component, _ in numbers)
 
     def nearest(self, one: int, other: int) -> tuple[tuple[float, float], int, float] | None:
-        """Where two labels come nearest on one layer: the middle between them, the layer, the distance in mm; None where they share no layer."""
+        """Where two labels come nearest on one layer: the middle between them, the layer, the distance in mm; None where they share no
+        layer."""
         best: tuple[float, int, tuple[float, float]] | None = None
         for layer, (copper, labels) in enumerate(zip(self.copper.layers, self.finder.piece_label, strict=True)):
             mine, others = copper.shape[labels == one], copper.shape[labels == other]
