@@ -43,7 +43,8 @@ def check(track: Track, limits: Limits, context: Context) -> Iterator[Finding]:
         change = return_change(context.artwork, context.copper, context.nets, track.walk, via)
         if change.shared or not change.before or not change.after or (change.distance is not None and change.distance <= reach):
             continue
-        what = "via" if {label for _, label in change.before} & {label for _, label in change.after} else "capacitor"
+        names = [{context.nets.name_of(label) for _, label in planes} for planes in (change.before, change.after)]
+        what = "via" if names[0] & names[1] else "capacitor"
         nearest = (
             f"the nearest {change.joint or what} that joins them is {change.distance:.2f} mm away"
             if change.distance is not None

@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from impcheck.artwork.image import Bools, Floats
-from impcheck.path.edges import LocalEdges
+from impcheck.path.edges import ROUNDING, LocalEdges
 from impcheck.path.frame import Frame, corners
 
 SURE_MERGE = 0.004  # mm: two events that must be placed exactly become one when closer
@@ -114,8 +114,9 @@ def boundaries(
             return np.empty(0, np.int64), np.empty(0)
         window = np.concatenate([p[0] for p in places])
         s = np.concatenate([p[1] for p in places])
-        inside = (s >= 0) & (s <= frame.windows.length[window])
-        return frame.leg[window[inside]], frame.base[window[inside]] + s[inside]
+        length = frame.windows.length[window]
+        inside = (s >= -ROUNDING) & (s <= length + ROUNDING)  # what lies on the border of two windows must not fall between them
+        return frame.leg[window[inside]], frame.base[window[inside]] + np.clip(s, 0.0, length)[inside]
 
     sure_leg, sure_s = along(sure)
     must = [legs, legs, frame.leg[corner]], [np.zeros(len(legs)), frame.length, frame.base[corner]]
