@@ -3,6 +3,7 @@ input)."""
 
 from __future__ import annotations
 
+import os
 import sys
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
@@ -17,6 +18,7 @@ if TYPE_CHECKING:
     from impcheck.errors import InputError
 
 FINDINGS, BAD_INPUT, INTERRUPTED = 1, 2, 130
+os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # sections are small: processes share the work, not threads
 
 
 @click.group(context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100})
@@ -46,9 +48,9 @@ def main() -> None:
     show_default=True,
     help="The lowest level of a finding that gives exit status 1.",
 )
-@click.option("--jobs", type=click.IntRange(1, 256), default=1, show_default=True, metavar="N", help="Processes that solve cross-sections.")
+@click.option("--jobs", type=click.IntRange(1, 256), metavar="N", help="Processes that solve cross-sections; one a core unless said.")
 @click.option("--timing", is_flag=True, help="Say how long each step took.")
-def check(boards: tuple[Path, ...], outputs: tuple[Path, ...], fail_on: str, jobs: int, timing: bool) -> None:
+def check(boards: tuple[Path, ...], outputs: tuple[Path, ...], fail_on: str, jobs: int | None, timing: bool) -> None:
     """Check boards: read, rebuild, walk, solve, judge.
 
     BOARD is a board file (board.yaml), or a folder that holds one.
@@ -64,7 +66,7 @@ def check(boards: tuple[Path, ...], outputs: tuple[Path, ...], fail_on: str, job
 
             renderers = [(path, renderer_for(path)) for path in outputs]  # before the long work: a wrong ending is told at once
             with progress_line() as progress:
-                checked = run(board, jobs=jobs, progress=progress)
+                checked = run(board, jobs=jobs or os.cpu_count() or 1, progress=progress)
             for path, render in renderers:
                 write_atomically(path, render(checked.document))
             print_document(checked.document)

@@ -10,12 +10,14 @@ from __future__ import annotations
 import bisect
 import math
 from dataclasses import dataclass
+from functools import lru_cache
 
 from impcheck.artwork.stackup import Slab, Stackup
 from impcheck.fields.section import Coating, Conductor, Section
 
 Edges = tuple[tuple[float, float], ...]
 Layer = tuple[int, float, Edges]  # copper layer, its distance from the trace, its openings
+Layers = tuple[Layer, ...]
 
 # What matters, in heights of the trace over the plane. Solving a 50 ohm microstrip and a stripline with an opening 2.6 heights wide
 # beside the trace,
@@ -121,34 +123,39 @@ def place_of(
                 break
             openings[side].append((index, away, found))
 
-    def shape(above_open: list[Layer], below_open: list[Layer]) -> Shape:
-        ends = [
+    def shape(above_open: Layers, below_open: Layers) -> Shape:
+        ends = tuple(
             closed[side] if given or not openings[side] else openings[side][0][0] for side, given in enumerate((above_open, below_open))
-        ]
-        planes = tuple(sorted((index, _edges(found, half + FAR * away)) for index, away, found in (*above_open, *below_open)))
-        found = Shape(layer, width, near, planes, ends[0], ends[1], coated)
-        return min(found, _mirrored(found), key=lambda s: (s.beside, s.planes))
+        )
+        return _canonical(layer, width, near, above_open + below_open, ends, coated)
 
     # what lies under the trace, or behind an opening under it, stays together; single openings beside it are taken apart
-    under: list[list[Layer]] = [[], []]
+    under: list[Layers] = [(), ()]
     parts: dict[Shape, float] = {}
     for side in (0, 1):
         if len(openings[side]) != 1:
-            under[side] = openings[side]
+            under[side] = tuple(openings[side])
             continue
         index, away, found = openings[side][0]
         apart = [opening for opening in found if opening[0] >= half or opening[1] <= -half]
         together = tuple(opening for opening in found if opening not in apart)
         if together:
-            under[side] = [(index, away, together)]
+            under[side] = ((index, away, together),)
         for opening in apart:
             for model, power in _models(opening, half, away):
-                alone: list[list[Layer]] = [[], []]
-                alone[side] = [(index, away, (model,))]
-                part = shape(*alone)
+                alone = ((index, away, (model,)),)
+                part = shape(alone, ()) if side == 0 else shape((), alone)
                 parts[part] = parts.get(part, 0.0) + power
     order = sorted(parts.items(), key=lambda found: (found[0].planes, found[0].closed_above, found[0].closed_below))
-    return Place(shape(*under), shape([], []), tuple((part, round(power, 3)) for part, power in order))
+    return Place(shape(*under), shape((), ()), tuple((part, round(power, 3)) for part, power in order))
+
+
+@lru_cache(maxsize=100_000)
+def _canonical(layer: int, width: float, near: Edges, openings: Layers, ends: tuple[int, ...], coated: bool) -> Shape:
+    """The shape, or its mirror image where that stands first."""
+    planes = tuple(sorted((index, _edges(found, width / 2 + FAR * away)) for index, away, found in openings))
+    shape = Shape(layer, width, near, planes, ends[0], ends[1], coated)
+    return min(shape, _mirrored(shape), key=lambda s: (s.beside, s.planes))
 
 
 def _mirrored(shape: Shape) -> Shape:

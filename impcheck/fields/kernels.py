@@ -8,6 +8,8 @@ panel in the complex plane: int P_n(t) / (zeta - t) dt = 2 Q_n(zeta) and int P_n
 
 from __future__ import annotations
 
+from functools import lru_cache
+
 import numpy as np
 from numpy.polynomial import legendre
 from numpy.typing import NDArray
@@ -18,6 +20,7 @@ Complexes = NDArray[np.complex128]
 NEAR = 2.5  # half-lengths from its middle within which a panel is integrated in closed form
 
 
+@lru_cache
 def gauss(q: int) -> tuple[Floats, Floats, Floats]:
     """Nodes, weights, and the (q, q) matrix from nodal values to Legendre coefficients, on [-1, 1]."""
     nodes, weights = legendre.leggauss(q)

@@ -70,20 +70,26 @@ def condensation(q: int) -> tuple[Floats, Floats, Floats]:
     return breaks, np.concatenate(rows), v
 
 
-def mesh_of(boundary: Boundary, q: int, grading: Grading) -> Mesh:
-    """Cuts every segment into panels."""
-    nodes, weights, _ = gauss(q)
-    breaks, _, v = condensation(q)
+def cuts_of(boundary: Boundary, grading: Grading) -> list[list[float]]:
+    """Distances along every segment, from its start, where its panels begin and end."""
     start = boundary.start[:, 0] + 1j * boundary.start[:, 1]
     end = boundary.end[:, 0] + 1j * boundary.end[:, 1]
     corners = np.unique(np.round(np.concatenate([start, end]), 9))
     seen = np.concatenate([corners, np.conj(corners)]) if boundary.image else corners
+    return [_cuts(a, b, seen, grading) for a, b in zip(start.tolist(), end.tolist(), strict=True)]
+
+
+def mesh_of(boundary: Boundary, q: int, cuts: list[list[float]]) -> Mesh:
+    """Panels with q nodes on every segment, cut where `cuts_of` says."""
+    nodes, weights, _ = gauss(q)
+    breaks, _, v = condensation(q)
+    start = boundary.start[:, 0] + 1j * boundary.start[:, 1]
+    end = boundary.end[:, 0] + 1j * boundary.end[:, 1]
     plain: list[tuple[complex, complex, int]] = []
     ends: list[tuple[complex, complex, int]] = []  # corner, far end, segment
     for index, (a, b) in enumerate(zip(start.tolist(), end.tolist(), strict=True)):
-        cuts = _cuts(a, b, seen, grading)
         direction = (b - a) / abs(b - a)
-        points = [a + direction * c for c in cuts]
+        points = [a + direction * c for c in cuts[index]]
         ends.append((points[0], points[1], index))
         ends.append((points[-1], points[-2], index))
         plain.extend((p, r, index) for p, r in pairwise(points[1:-1]))

@@ -22,6 +22,7 @@ from impcheck.nets.nets import Nets
 from impcheck.path.walk import Intervals, Run, Walk, Zone
 
 GRAIN = 0.002  # mm: stations whose cuts agree to this are one before anything is computed
+FEWEST = 12  # sections a process, for which starting one does not pay
 ACCURACY = 5e-3  # relative, of each section: a tenth of the narrowest tolerance boards are built to
 Solved = tuple[float, float, float]  # impedance in ohm, effective permittivity, estimated relative error
 
@@ -37,11 +38,12 @@ def profile_nets(
     returns = np.zeros(nets.count, bool)
     returns[sorted(nets.returns)] = True
     places: dict[Place, int] = {}
+    known: dict[tuple[object, ...], int] = {}
     rows: list[list[NDArray[np.int64]]] = []
     for walk in walks:
         own = np.zeros(nets.count, bool)
         own[list(walk.net.labels)] = True
-        rows.append([_places_of_run(run, stackup, copper, returns, own, places) for run in walk.runs])
+        rows.append([_places_of_run(run, stackup, copper, (returns, own), (places, known)) for run in walk.runs])
     table = np.array([*_solve_places(list(places), stackup, jobs), (np.nan, np.nan, np.nan)])
     profiles = []
     lost = 0
@@ -63,19 +65,24 @@ def profile_nets(
     return tuple(profiles), tuple(remarks)
 
 
-def _places_of_run(run: Run, stackup: Stackup, copper: Copper, returns: Bools, own: Bools, places: dict[Place, int]) -> NDArray[np.int64]:
+def _places_of_run(
+    run: Run,
+    stackup: Stackup,
+    copper: Copper,
+    labels: tuple[Bools, Bools],
+    found_before: tuple[dict[Place, int], dict[tuple[object, ...], int]],
+) -> NDArray[np.int64]:
     """(n,) index into `places` of each station, -1 where there is no section: in vias, and where there is nothing to return on."""
-    stations = run.stations
+    (returns, own), (places, known), stations = labels, found_before, run.stations
     fine = np.isin(stations.zone, (Zone.TRACE, Zone.BEND))
     coated = _coated(run, stackup, copper)
     cuts = {layer: _prepared(cut, stations.centre, returns, own, layer == run.layer) for layer, cut in stations.cuts.items()}
     width = np.maximum(np.round(stations.width / GRAIN * 2).astype(np.int64), 1)
     found = np.full(len(stations), -1, np.int64)
-    known: dict[tuple[object, ...], int] = {}
     above = [layer for layer in range(run.layer - 1, -1, -1) if layer in cuts]
     below = [layer for layer in range(run.layer + 1, len(stackup.coppers)) if layer in cuts]
     for i in np.flatnonzero(stations.zone != Zone.VIA).tolist():
-        key = (width[i], fine[i], coated[i], *(cut.key(i) for cut in cuts.values()))
+        key = (run.layer, width[i], fine[i], coated[i], *cuts, *(cut.key(i) for cut in cuts.values()))
         index = known.get(key)
         if index is None:
             half = float(stations.width[i]) / 2
@@ -161,7 +168,7 @@ def _solve_places(places: list[Place], stackup: Stackup, jobs: int) -> list[Solv
 
 
 def _solve_all(shapes: list[Shape], stackup: Stackup, jobs: int) -> list[Solved]:
-    if jobs > 1 and len(shapes) > 8 * jobs:
+    if jobs > 1 and len(shapes) > FEWEST * jobs:
         size = max(1, len(shapes) // (8 * jobs))
         chunks = [shapes[i : i + size] for i in range(0, len(shapes), size)]
         with ProcessPoolExecutor(jobs) as pool:

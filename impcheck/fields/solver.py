@@ -14,7 +14,7 @@ from scipy.constants import epsilon_0, mu_0
 from impcheck.fields.boundary import Boundary, boundary_of
 from impcheck.fields.kernels import NEAR, gauss, near_field, near_potential
 from impcheck.fields.line import Line
-from impcheck.fields.panels import SUBPANELS, Grading, Mesh, condensation, mesh_of
+from impcheck.fields.panels import SUBPANELS, Grading, Mesh, condensation, cuts_of, mesh_of
 from impcheck.fields.section import Section
 
 Floats = NDArray[np.float64]
@@ -31,8 +31,9 @@ def solve(section: Section, accuracy: float = 2e-3) -> Line:
     boundary = boundary_of(section)
     line: Line | None = None
     for grading in GRADINGS:
-        coarse = capacitances(boundary, NODES - 1, grading)
-        fine = capacitances(boundary, NODES, grading)
+        cuts = cuts_of(boundary, grading)
+        coarse = capacitances(boundary, NODES - 1, cuts)
+        fine = capacitances(boundary, NODES, cuts)
         line = _line(boundary, fine, coarse)
         if line.error <= accuracy:
             break
@@ -47,9 +48,9 @@ def _line(boundary: Boundary, fine: tuple[Floats, Floats], coarse: tuple[Floats,
     return Line(names, c, c0, np.asarray(mu_0 * 1e-3 * epsilon_0 * 1e-3 * np.linalg.inv(c0), np.float64), 0.25 * difference)
 
 
-def capacitances(boundary: Boundary, q: int, grading: Grading) -> tuple[Floats, Floats]:
+def capacitances(boundary: Boundary, q: int, cuts: list[list[float]]) -> tuple[Floats, Floats]:
     """Maxwell matrices (k, k) of the signals with and without dielectrics, in units of eps0, symmetric to the last digit."""
-    mesh = mesh_of(boundary, q, grading)
+    mesh = mesh_of(boundary, q, cuts)
     conductor = boundary.conductor[mesh.segment]
     left, right = boundary.left[mesh.segment], boundary.right[mesh.segment]
     metal = conductor > -2

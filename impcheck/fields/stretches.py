@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from impcheck.artwork.image import Floats
 from impcheck.fields.profile import NetProfile, RunProfile
 from impcheck.path.walk import Run, Zone
 
@@ -52,24 +53,33 @@ def _of_run(run: Run, fields: RunProfile) -> list[Stretch]:
     )
     first = np.concatenate([[0], np.flatnonzero(change) + 1])
     last = np.concatenate([first[1:], [len(s)]])
-    found = []
-    for a, b in zip(first.tolist(), last.tolist(), strict=True):
-        length = s.end[a:b] - s.begin[a:b]
-        weight = np.maximum(length, 1e-9)
-        found.append(
-            Stretch(
-                layer=run.layer,
-                along=(float(s.begin[a]), float(s.end[b - 1])),
-                start=run.point_at(float(s.begin[a])),
-                end=run.point_at(float(s.end[b - 1])),
-                width=float(np.average(s.width[a:b], weights=weight)),
-                impedance=float(np.average(fields.impedance[a:b], weights=weight)),
-                eps_eff=float(np.average(fields.eps_eff[a:b], weights=weight)),
-                delay=float(np.sum(fields.delay[a:b] * length)),
-                above=int(s.above[a]),
-                below=int(s.below[a]),
-                coverage=float(cover[a:b].min()),
-                zone=Zone(int(s.zone[a])),
-            )
+    length = s.end - s.begin
+    weight = np.maximum(length, 1e-9)
+    total = np.add.reduceat(weight, first)
+
+    def mean(values: Floats) -> list[float]:
+        found: list[float] = (np.add.reduceat(values * weight, first) / total).tolist()
+        return found
+
+    width, impedance, eps_eff = mean(s.width), mean(fields.impedance), mean(fields.eps_eff)
+    delay = np.add.reduceat(fields.delay * length, first).tolist()
+    least = np.minimum.reduceat(cover, first).tolist()
+    begin, end = s.begin[first], s.end[last - 1]
+    starts, ends = run.points_at(begin), run.points_at(end)
+    return [
+        Stretch(
+            layer=run.layer,
+            along=(float(begin[k]), float(end[k])),
+            start=starts[k],
+            end=ends[k],
+            width=width[k],
+            impedance=impedance[k],
+            eps_eff=eps_eff[k],
+            delay=delay[k],
+            above=int(s.above[a]),
+            below=int(s.below[a]),
+            coverage=least[k],
+            zone=Zone(int(s.zone[a])),
         )
-    return found
+        for k, a in enumerate(first.tolist())
+    ]

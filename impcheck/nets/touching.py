@@ -130,5 +130,12 @@ def _barrel_edges(layer: LayerCopper, barrels: Barrels, offset: int, pieces: int
     for index in np.flatnonzero(~round_hole).tolist():
         probe[index] = shapely.linestrings([barrels.start[here[index]], barrels.end[here[index]]])
     reach = barrels.diameter[here] / 2 + TOUCH
-    which, piece = shapely.STRtree(layer.shape).query(probe, predicate="dwithin", distance=reach)
+    low, high = (
+        np.minimum(barrels.start[here], barrels.end[here]) - reach[:, None],
+        np.maximum(barrels.start[here], barrels.end[here]) + reach[:, None],
+    )
+    which, piece = shapely.STRtree(layer.shape).query(shapely.box(low[:, 0], low[:, 1], high[:, 0], high[:, 1]))
+    shapely.prepare(layer.shape[np.unique(piece)])
+    hit = shapely.dwithin(layer.shape[piece], probe[which], reach[which])
+    which, piece = which[hit], piece[hit]
     return np.column_stack([here[which] + pieces, piece + offset])

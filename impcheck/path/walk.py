@@ -68,12 +68,16 @@ class Run:
     along: tuple[float, float]  # path coordinate of both ends, mm from the start of the walk
     stations: Stations
 
-    def point_at(self, along: float) -> tuple[float, float]:
-        """The point of the centreline at a path coordinate, mm."""
+    def points_at(self, along: Floats) -> list[tuple[float, float]]:
+        """The points of the centreline at path coordinates (n,), mm."""
         reached = np.concatenate([[0.0], np.cumsum(np.hypot(*np.diff(self.line, axis=0).T))])
         span = self.along[1] - self.along[0]
-        at = 0.0 if span <= 0 else (along - self.along[0]) / span * float(reached[-1])
-        return float(np.interp(at, reached, self.line[:, 0])), float(np.interp(at, reached, self.line[:, 1]))
+        at = (along - self.along[0]) * (float(reached[-1]) / span if span > 0 else 0.0)
+        return list(zip(np.interp(at, reached, self.line[:, 0]).tolist(), np.interp(at, reached, self.line[:, 1]).tolist(), strict=True))
+
+    def point_at(self, along: float) -> tuple[float, float]:
+        """The point of the centreline at a path coordinate, mm."""
+        return self.points_at(np.array([along]))[0]
 
 
 @dataclass(frozen=True)

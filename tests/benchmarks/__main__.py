@@ -10,6 +10,7 @@ from __future__ import annotations
 
 import argparse
 import json
+import os
 import resource
 import subprocess
 import sys
@@ -44,7 +45,7 @@ def one(board: Path) -> None:
     from impcheck.pipeline import run
 
     begin = perf_counter()
-    checked = run(board)
+    checked = run(board, jobs=os.cpu_count() or 1)
     whole = perf_counter() - begin
     summary = checked.document.summary
     peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024
