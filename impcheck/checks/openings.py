@@ -13,6 +13,7 @@ from impcheck.copper.copper import LayerCopper
 
 WINDOWS = (3.0, 9.0, 27.0)  # mm, half-widths of the window looked at, until the opening ends inside it
 HAIRLINE = 0.0075  # mm: slits of cut-ins narrower than twice this are no openings
+ON_EDGE = 1e-6  # mm
 
 
 @dataclass(frozen=True)
@@ -31,39 +32,34 @@ class Opening:
 
 
 def opening_at(
-    layer: LayerCopper,
-    labels: Ints,
-    returns: Set[int],
-    at: tuple[float, float],
-    normal: tuple[float, float],
-    board: tuple[float, float, float, float],
+    layer: LayerCopper, labels: Ints, returns: Set[int], at: tuple[float, float], normal: tuple[float, float], reach: float
 ) -> Opening | None:
-    """The opening of a layer's return copper that holds a place; None where there is copper at the place."""
+    """The opening of a layer's return copper that holds a place, or the nearest one within `reach` mm of it; None where there is none.
+
+    A plane is taken to reach as far as the convex hull of its copper: what is free inside is an opening, and runs out of the plane where
+    it meets the hull; what is free outside is where the plane has ended.
+    """
     mine = np.flatnonzero(np.isin(labels, sorted(returns)))
     tree = shapely.STRtree(layer.shape[mine])
     place = shapely.Point(at)
     for half in WINDOWS:
         window = shapely.box(at[0] - half, at[1] - half, at[0] + half, at[1] + half)
         near = mine[tree.query(window, predicate="intersects")]
-        clipped = shapely.intersection(layer.shape[near], window)
-        copper = shapely.buffer(shapely.union_all(clipped), HAIRLINE, join_style="mitre")
-        free = shapely.get_parts(shapely.difference(window, copper))
-        holder = [part for part in free if part.distance(place) < HAIRLINE * 2]
-        if not holder:
-            return None
-        opening = min(holder, key=lambda part: part.distance(place))
-        if shapely.disjoint(opening, shapely.get_exterior_ring(window)) or half == WINDOWS[-1]:
+        copper = shapely.union_all(shapely.intersection(layer.shape[near], window))
+        hull = shapely.convex_hull(copper)
+        closed = shapely.buffer(copper, HAIRLINE, join_style="mitre")
+        parts = shapely.get_parts(shapely.difference(hull, closed))
+        distances = shapely.distance(parts, place)
+        if not (distances < max(reach, 2 * HAIRLINE)).any():
+            if shapely.distance(closed, place) == 0 and not shapely.is_empty(closed):
+                return None
+            return Opening(half, half, True, True)
+        opening = parts[int(np.argmin(distances))]
+        if shapely.distance(opening, shapely.get_exterior_ring(window)) > ON_EDGE:
             break
-        beyond = shapely.box(*board)
-        if not shapely.covers(beyond, window) and shapely.disjoint(
-            opening, shapely.intersection(shapely.get_exterior_ring(window), beyond)
-        ):
-            break
-    points = shapely.get_coordinates(opening) - np.array(at)
-    across = points @ np.array(normal)
-    inside = shapely.box(*board)
-    edge = shapely.get_coordinates(opening)
-    out = ~shapely.contains_xy(shapely.buffer(inside, -HAIRLINE), edge[:, 0], edge[:, 1]) | (np.abs(points).max(axis=1) >= half - 1e-9)
+    points = shapely.get_coordinates(opening)
+    across = (points - np.array(at)) @ np.array(normal)
+    out = shapely.distance(shapely.points(points), shapely.boundary(hull)) <= ON_EDGE
     return Opening(
         left=float(max(across.max(), 0.0)),
         right=float(max(-across.min(), 0.0)),

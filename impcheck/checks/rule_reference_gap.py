@@ -55,6 +55,21 @@ def check(track: Track, limits: Limits, context: Context) -> Iterator[Finding]:
                 continue
             yield _finding(track, spot, side, layer, before, after, limits, context, shortest)
         yield from _seams(track, judged, layer, cover, label, side, limits, context, shortest)
+    yield from _none(track, judged, limits, context, shortest)
+
+
+def _none(track: Track, judged: Bools, limits: Limits, context: Context, shortest: float) -> Iterator[Finding]:
+    """Trace that has no usual reference on either side, and no other copper in its section either: a plane is missing altogether, or for
+    most of the way."""
+    planes = np.maximum(references(track, "above", context)[0], references(track, "below", context)[0])
+    marked = judged & (planes < 0) & ~np.isfinite(track.impedance)
+    for spot in track.spots(marked, judged, np.where(marked, 1.0, 0.0)):
+        if spot.length >= shortest:
+            text = (
+                f"over {spot.length:.2f} mm of trace no copper of a return net is near, above, below or beside it: the current has nothing to "
+                "return on and the line no impedance of its own"
+            )
+            yield context.finding(RULE, limits.level, track, spot, spot.length, shortest, "mm", text)
 
 
 def references(track: Track, side: str, context: Context) -> tuple[Ints, Floats, Ints]:
@@ -133,7 +148,6 @@ def _finding(
     at = track.place(centre, float(np.clip(middle, track.begin[centre], track.end[centre])))
     run = track.walk.runs[track.run[centre]]
     normal = run.stations.left_normal[int(track.station[centre])]
-    width = float(track.width[centre])
     if before >= 0 and after >= 0 and before != after:
         what = _split(before, after, context)
     else:
@@ -143,9 +157,9 @@ def _finding(
             context.nets.returns,
             at,
             (float(normal[0]), float(normal[1])),
-            context.copper.outline_box,
+            float(track.width[centre]) / 2,
         )
-        what = _void_or_slot(spot, opening, width, before, after, context)
+        what = _void_or_slot(spot, opening, before, after, context)
     word = "over" if side == "above" else "under"
     text = (
         f"{word} {spot.length:.2f} mm of trace the reference on {context.layer(plane)} is missing: {what}; "
@@ -172,19 +186,23 @@ def _split(before: int, after: int, context: Context) -> str:
     return f"a split between {names}; the return current crosses it only through another plane or a capacitor between the two"
 
 
-def _void_or_slot(spot: Spot, opening: Opening | None, width: float, before: int, after: int, context: Context) -> str:
+def _void_or_slot(spot: Spot, opening: Opening | None, before: int, after: int, context: Context) -> str:
     net = context.nets.name_of(before if before >= 0 else after) if max(before, after) >= 0 else "the return net"
     if opening is None:
         return f"an opening in {net}"
-    across = opening.left + opening.right
-    round_way = 2 * max(min(opening.left, opening.right), 0.0)
-    if (opening.open_left and opening.open_right) or ((before < 0) != (after < 0) and opening.endless):
+    if opening.endless and (before < 0 or after < 0):
         return f"the copper of {net} ends here and does not come back"
+    if opening.open_left and opening.open_right:
+        return f"a split between two areas of {net}; the return current crosses it only through other layers"
+    across = opening.left + opening.right
     if opening.endless:
-        free = opening.right if opening.open_left else opening.left
-        return f"a slot in {net} that runs out of the plane; the return goes round its closed end, {2 * max(free, 0.0):.2f} mm"
+        closed_end = opening.right if opening.open_left else opening.left
+        return f"a slot in {net} that runs out of the plane; the return goes round its closed end, {2 * closed_end:.2f} mm"
     kind = "slot" if across >= SLOT * max(spot.length, 1e-6) else "void"
-    return f"a {kind} in {net}, {across:.2f} mm across the trace; the return goes round its nearer end, {round_way:.2f} mm"
+    return (
+        f"a {kind} in {net}, {across:.2f} mm across the trace; the return goes round its nearer end, "
+        f"{2 * min(opening.left, opening.right):.2f} mm"
+    )
 
 
 def _other_side(track: Track, spot: Spot, side: str, context: Context) -> str:

@@ -82,6 +82,9 @@ def _without(piece: BaseGeometry, clear: Shapes, cluster: Rows) -> BaseGeometry:
         clear = np.concatenate([clear[~together], united[shapely.get_type_id(united) == shapely.GeometryType.POLYGON]])
     shapely.prepare(piece)
     inside = (shapely.get_num_interior_rings(clear) == 0) & shapely.contains_properly(piece, clear)
+    if together.any():
+        a, b = shapely.STRtree(clear).query(clear, predicate="intersects")
+        inside[a[a != b]] = False  # shapes that meet in points can ring copper, which then is a piece of its own
     if inside.any():
         rings = [*shapely.get_rings(piece), *shapely.get_exterior_ring(clear[inside])]
         piece = shapely.polygons(rings[0], holes=rings[1:])

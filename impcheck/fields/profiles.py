@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from concurrent.futures import ProcessPoolExecutor
 
 import numpy as np
@@ -13,7 +13,7 @@ from impcheck.artwork.image import Bools, Floats
 from impcheck.artwork.stackup import Stackup
 from impcheck.copper.copper import Copper
 from impcheck.errors import Remark, RemarkKind
-from impcheck.fields.cross_section import Edges, Place, Shape, place_of, section_of
+from impcheck.fields.cross_section import COARSE, Edges, Place, Shape, place_of, section_of
 from impcheck.fields.line import SPEED
 from impcheck.fields.profile import NetProfile, RunProfile
 from impcheck.fields.section import SectionError
@@ -22,6 +22,8 @@ from impcheck.nets.nets import Nets
 from impcheck.path.walk import Intervals, Run, Walk, Zone
 
 GRAIN = 0.002  # mm: stations whose cuts agree to this are one before anything is computed
+MOST = 800  # sections solved for one board
+COARSEST = 32.0
 FEWEST = 12  # sections a process, for which starting one does not pay
 ACCURACY = 5e-3  # relative, of each section: a tenth of the narrowest tolerance boards are built to
 Solved = tuple[float, float, float]  # impedance in ohm, effective permittivity, estimated relative error
@@ -37,14 +39,19 @@ def profile_nets(
     """
     returns = np.zeros(nets.count, bool)
     returns[sorted(nets.returns)] = True
-    places: dict[Place, int] = {}
-    known: dict[tuple[object, ...], int] = {}
-    rows: list[list[NDArray[np.int64]]] = []
-    for walk in walks:
-        own = np.zeros(nets.count, bool)
-        own[list(walk.net.labels)] = True
-        rows.append([_places_of_run(run, stackup, copper, (returns, own), (places, known)) for run in walk.runs])
-    table = np.array([*_solve_places(list(places), stackup, jobs), (np.nan, np.nan, np.nan)])
+    factor = 1.0
+    while True:
+        places: dict[Place, int] = {}
+        known: dict[tuple[object, ...], int] = {}
+        rows: list[list[NDArray[np.int64]]] = []
+        for walk in walks:
+            own = np.zeros(nets.count, bool)
+            own[list(walk.net.labels)] = True
+            rows.append([_places_of_run(run, stackup, copper, (returns, own), (places, known), factor) for run in walk.runs])
+        if len(_distinct(places)) <= MOST or factor >= COARSEST:
+            break
+        factor *= 2
+    table = np.array([*solve_places(list(places), stackup, jobs), (np.nan, np.nan, np.nan)])
     profiles = []
     lost = 0
     for walk, runs in zip(walks, rows, strict=True):
@@ -55,6 +62,12 @@ def profile_nets(
             found.append(RunProfile(z0, eps, np.sqrt(eps) / SPEED, error))
         profiles.append(NetProfile(walk, tuple(found)))
     remarks = []
+    if factor > 1:
+        text = (
+            f"the copper beside and under the traces varies so much that cross-sections were rounded {factor:.0f} times more coarsely than "
+            f"usual, so that at most {MOST} have to be solved: impedances may be off by about {0.3 * factor:.1g} %"
+        )
+        remarks.append(Remark(RemarkKind.LIMIT, text))
     if lost:
         total = sum(len(index) for runs in rows for index in runs)
         text = (
@@ -71,6 +84,7 @@ def _places_of_run(
     copper: Copper,
     labels: tuple[Bools, Bools],
     found_before: tuple[dict[Place, int], dict[tuple[object, ...], int]],
+    factor: float,
 ) -> NDArray[np.int64]:
     """(n,) index into `places` of each station, -1 where there is no section: in vias, and where there is nothing to return on."""
     (returns, own), (places, known), stations = labels, found_before, run.stations
@@ -89,7 +103,9 @@ def _places_of_run(
             beside = tuple((a, b) for a, b in cuts[run.layer].edges(i) if a > half - 1e-3 or b < -half + 1e-3)
             upper = [(layer, cuts[layer].edges(i)) for layer in above]
             lower = [(layer, cuts[layer].edges(i)) for layer in below]
-            place = place_of(run.layer, float(stations.width[i]), beside, upper, lower, stackup, bool(coated[i]), bool(fine[i]))
+            place = place_of(
+                run.layer, float(stations.width[i]), beside, upper, lower, stackup, bool(coated[i]), factor * (1.0 if fine[i] else COARSE)
+            )
             main = place.main
             nothing = main.closed_above < 0 and main.closed_below < 0 and not main.planes and not main.beside
             index = -1 if nothing else places.setdefault(place, len(places))
@@ -147,13 +163,22 @@ def _coated(run: Run, stackup: Stackup, copper: Copper) -> Bools:
     return covered
 
 
-def _solve_places(places: list[Place], stackup: Stackup, jobs: int) -> list[Solved]:
-    shapes = {
-        shape: None
-        for place in places
-        for shape in ((place.main, place.base, *(part for part, _ in place.beside)) if place.beside else (place.main,))
-    }
-    solved = dict(zip(shapes, _solve_all(list(shapes), stackup, jobs), strict=True))
+def _distinct(places: Iterable[Place]) -> list[Shape]:
+    """Every section that has to be solved for some places, once."""
+    found: dict[Shape, None] = {}
+    for place in places:
+        found[place.main] = None
+        if place.beside:
+            found[place.base] = None
+            found.update((part, None) for part, _ in place.beside)
+    return list(found)
+
+
+def solve_places(places: list[Place], stackup: Stackup, jobs: int = 1) -> list[Solved]:
+    """Impedance (ohm), effective permittivity and estimated relative error of each place; nan where a section has no solution. Every
+    distinct section is solved once, by `jobs` processes when there are many."""
+    shapes = _distinct(places)
+    solved = dict(zip(shapes, _solve_all(shapes, stackup, jobs), strict=True))
     found = []
     for place in places:
         z0, eps, error = solved[place.main]

@@ -31,7 +31,7 @@ def connect(artwork: Artwork, copper: Copper) -> Nets:
     }  # a plane shorted to a net stays a plane
     remarks = list(evidence.remarks)
     if artwork.board.returns:
-        returns, shown = named_returns(artwork.board, names, problems)
+        returns, shown = named_returns(artwork.board, names, called, problems)
     else:
         returns = returns_by_area(copper, piece_label) - own
         shown = tuple(sorted({names[label][0] if label in names else "unnamed copper" for label in returns}))

@@ -4,17 +4,16 @@ their lines."""
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Iterable
 from dataclasses import dataclass, replace
 
 import numpy as np
-import shapely
 
 from impcheck.artwork.board import End, NetRequest
-from impcheck.artwork.names import did_you_mean, matching, natural
+from impcheck.artwork.names import did_you_mean, matching
 from impcheck.artwork.parts import Artwork
 from impcheck.errors import Problems
 from impcheck.nets.evidence import NEAR_COPPER, ON_COPPER, Finder
+from impcheck.nets.mask_places import mask_places
 from impcheck.nets.nets import BoardPin, DeclaredNet, Join
 
 
@@ -38,6 +37,7 @@ class Declarer:
         for pin in self.pins:
             self.by_pin[pin.component, pin.number].append(pin)
             self.by_component[pin.component].append(pin)
+        self.christened: set[int] = set()  # labels that only declarations name
         self.file = self.artwork.board.file
 
     def all(self) -> list[DeclaredNet]:
@@ -58,20 +58,22 @@ class Declarer:
 
     def single(self, request: NetRequest, joins: list[Join]) -> list[DeclaredNet]:
         """The nets one request stands for."""
-        begin = [pin for end in request.begin if (pin := self.end(end)) is not None]
-        ends = [pin for end in request.end if (pin := self.end(end)) is not None]
+        hits = matching(request.net, self.labels_of)
+        wanted = {label for name in hits for label in self.labels_of[name]}
+        begin = [pin for end in request.begin if (pin := self.end(end, wanted)) is not None]
+        ends = [pin for end in request.end if (pin := self.end(end, wanted)) is not None]
         if len(begin) < len(request.begin) or len(ends) < len(request.end):
             return []
-        hits = matching(request.net, self.labels_of)
         if not hits:
-            unnamed = [pin.label for pin in (*begin, *ends) if pin.label not in self.names]
+            unnamed = [pin.label for pin in (*begin, *ends) if pin.label not in self.names or pin.label in self.christened]
             if not unnamed or len(unnamed) < len(begin) + len(ends):
                 self.problems.add(
                     self.file, request.line, f"net '{request.net}' is nowhere in the files", did_you_mean(request.net, self.labels_of)
                 )
                 return []
             for label in dict.fromkeys(unnamed):
-                self.names[label] = (request.net,)
+                self.names[label] = (*self.names.get(label, ()), request.net)  # two names given here are a short
+                self.christened.add(label)
                 self.labels_of[request.net].append(label)
             hits = [request.net]
         if len(hits) > 1 and (begin or ends):
@@ -97,9 +99,10 @@ class Declarer:
                     used.append(join)
                     labels.extend(label for label in (a, b) if label not in labels)
                     grown = True
+        self.check_ends(name, request, labels, [*begin, *ends])
         if not begin or not ends:
             through = {id(pin) for join in used for pin in join.pins}
-            own = [pin for pin in self.pins if pin.label in labels and id(pin) not in through] or self.openings(labels)
+            own = [pin for pin in self.own_pins(name, labels) if id(pin) not in through] or mask_places(self.finder, labels)
             taken = {(pin.component, pin.number) for pin in (*begin, *ends) if pin.component}
             rest = [pin for pin in own if not pin.component or (pin.component, pin.number) not in taken]
             if not begin and rest:
@@ -108,13 +111,31 @@ class Declarer:
         wanted = self.artwork.board.classes[request.net_class]
         return DeclaredNet(name, request, wanted, tuple(labels), tuple(begin), tuple(ends), tuple(used))
 
-    def end(self, end: End) -> BoardPin | None:
-        """The pin or place an end names; None (and a problem) where there is none."""
+    def own_pins(self, name: str, labels: list[int]) -> list[BoardPin]:
+        """Pins on a net's copper. Where some are named for the net, those on the same copper named for another (a short) are left out."""
+        found = [pin for pin in self.pins if pin.label in labels]
+        sure = {pin.label for pin in found if pin.net == name}
+        return [pin for pin in found if pin.label not in sure or pin.net in (name, "")]
+
+    def check_ends(self, name: str, request: NetRequest, labels: list[int], pins: list[BoardPin]) -> None:
+        """A problem for each end that lies on the copper of another net. On unnamed copper it may be the far side of an open."""
+        for end, pin in zip((*request.begin, *request.end), pins, strict=True):
+            if pin.label not in labels and pin.label in self.names:
+                other = self.names[pin.label][0]
+                self.problems.add(
+                    self.file,
+                    end.line or request.line,
+                    f"{end} is on net '{other}', not on '{name}'",
+                    "give an end on the net's own copper, or name the part between the two under `joins`",
+                )
+
+    def end(self, end: End, wanted: set[int]) -> BoardPin | None:
+        """The pin or place an end names, on the wanted copper where it can be; None (and a problem) where there is none."""
         if end.at is not None:
-            return self.place(end)
+            return self.place(end, wanted)
         pins = self.by_pin.get((end.component, end.pin))
         if pins:
-            return pins[0]
+            return min(pins, key=lambda pin: pin.label not in wanted)
         if end.component in self.by_component:
             numbers = [pin.number for pin in self.by_component[end.component]]
             self.problems.add(self.file, end.line, f"part {end.component} has no pin '{end.pin}'", did_you_mean(end.pin, numbers))
@@ -127,19 +148,19 @@ class Declarer:
             )
         return None
 
-    def place(self, end: End) -> BoardPin | None:
-        """The copper at a place."""
+    def place(self, end: End, wanted: set[int]) -> BoardPin | None:
+        """The copper at a place: of several layers, one whose copper is wanted, else unnamed, else the topmost."""
         assert end.at is not None
         names = self.artwork.names
         layers = range(len(names)) if end.layer is None else [names.index(end.layer)]
         point = np.array([end.at])
         for reach in (ON_COPPER, NEAR_COPPER):
-            for layer in layers:
-                label = int(self.finder.on_layer(layer, point, reach)[0])
-                if label >= 0:
-                    barrel = int(self.finder.barrel_at(point, 0.0)[0])
-                    through = barrel >= 0 and self.finder.barrel_label[barrel] == label
-                    return BoardPin("", "", end.at, None if through else layer, label, "")
+            here = [(layer, label) for layer in layers if (label := int(self.finder.on_layer(layer, point, reach)[0])) >= 0]
+            if here:
+                layer, label = min(here, key=lambda found: (found[1] not in wanted, found[1] in self.names))
+                barrel = int(self.finder.barrel_at(point, 0.0)[0])
+                through = barrel >= 0 and self.finder.barrel_label[barrel] == label
+                return BoardPin("", "", end.at, None if through else layer, label, "")
         self.problems.add(
             self.file, end.line, f"there is no copper at {end}", "give a place on the net's copper, in the artwork's own coordinates"
         )
@@ -160,38 +181,3 @@ class Declarer:
                 first, second = numbers.values()
                 found.append(Join(name, (first, second)))
         return found
-
-    def openings(self, labels: Iterable[int]) -> list[BoardPin]:
-        """Places where the solder mask lets a net's copper be soldered: its ends where nothing names pins. Openings over a barrel count
-        only where there are not two others (an open via is no end)."""
-        wanted = set(labels)
-        plain: list[BoardPin] = []
-        drilled: list[BoardPin] = []
-        copper = self.finder.copper
-        for side, layer in ((0, 0), (1, len(copper.layers) - 1)):
-            openings = copper.mask_openings[side]
-            pieces = np.flatnonzero(np.isin(self.finder.piece_label[layer], list(wanted)))
-            if len(openings) == 0 or len(pieces) == 0:
-                continue
-            which, piece = shapely.STRtree(copper.layers[layer].shape[pieces]).query(openings, predicate="intersects")
-            for opening in np.unique(which).tolist():
-                label = int(self.finder.piece_label[layer][pieces[piece[which == opening][0]]])
-                centre = shapely.get_coordinates(
-                    shapely.point_on_surface(openings[opening]) if not _holds(openings[opening]) else openings[opening].centroid
-                )[0]
-                barrel = int(self.finder.barrel_at(centre[None, :], 0.0)[0])
-                through = barrel >= 0 and self.finder.barrel_label[barrel] == label
-                pin = BoardPin("", "", (float(centre[0]), float(centre[1])), None if through else layer, label, "")
-                (drilled if through else plain).append(pin)
-        found = plain if len(plain) > 1 else plain + drilled
-        unique = {(pin.at, pin.layer): pin for pin in found}
-        return sorted(unique.values(), key=lambda pin: (pin.at, -1 if pin.layer is None else pin.layer))
-
-
-def _holds(shape: shapely.Polygon) -> bool:
-    return bool(shape.contains(shape.centroid))
-
-
-def sort_pins(pins: Iterable[BoardPin]) -> list[BoardPin]:
-    """Pins by part and number in natural order."""
-    return sorted(pins, key=lambda pin: (natural(pin.component), natural(pin.number), pin.at))

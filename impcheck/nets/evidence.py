@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections import Counter, defaultdict
 from dataclasses import dataclass, field
+from functools import cache
 
 import numpy as np
 import shapely
@@ -15,6 +16,7 @@ from impcheck.artwork.parts import Artwork
 from impcheck.copper.copper import Copper
 from impcheck.errors import Remark, RemarkKind
 from impcheck.nets.nets import BoardPin
+from impcheck.nets.touching import point_segment
 
 ON_COPPER = 0.001  # mm, a point this near lies on the copper
 NEAR_COPPER = 0.05  # mm, and this near where none is nearer: netlists round their places to 2.5 um and to pad centres
@@ -42,7 +44,12 @@ class Evidence:
         for source in (self.attribute_names, self.netlist_names):
             for label, names in source.items():
                 found[label].update(names)
-        return {label: tuple(sorted(names, key=lambda n: (-names[n], natural(n)))) for label, names in sorted(found.items())}
+        return {label: tuple(by_count(names)) for label, names in sorted(found.items())}
+
+
+def by_count(counted: Counter[str]) -> list[str]:
+    """Names, the most frequent first."""
+    return sorted(counted, key=lambda name: (-counted[name], natural(name))) if len(counted) > 1 else list(counted)
 
 
 class Finder:
@@ -61,11 +68,14 @@ class Finder:
         return self._trees[layer]
 
     def on_layer(self, layer: int, points: Floats, reach: float) -> Ints:
-        """(n,) label of the copper within `reach` of each point on a layer, the lowest piece where several overlap; -1 none."""
+        """(n,) label of the copper within `reach` of each point on a layer, the nearest; -1 none."""
         found = np.full(len(points), -1, np.int32)
-        if len(points) and len(self.copper.layers[layer].shape):
-            which, piece = self.tree(layer).query(shapely.points(points), predicate="dwithin", distance=reach)
-            order = np.lexsort((piece, which))[::-1]
+        shape = self.copper.layers[layer].shape
+        if len(points) and len(shape):
+            places = np.asarray(shapely.points(points), object)
+            which, piece = self.tree(layer).query(places, predicate="dwithin", distance=reach)
+            away = shapely.distance(shape[piece], places[which]) if reach > ON_COPPER else np.zeros(len(which))
+            order = np.lexsort((piece, away, which))[::-1]
             found[which[order]] = self.piece_label[layer][piece[order]]
         return found
 
@@ -75,16 +85,22 @@ class Finder:
         if self._barrels is None or len(points) == 0:
             return found
         barrels = self.copper.barrels
-        widest = float(np.max(barrels.diameter / 2 + np.hypot(*(barrels.end - barrels.start).T) / 2))
-        which, barrel = self._barrels.query(shapely.points(points), predicate="dwithin", distance=max(widest, reach))
-        middle = (barrels.start + barrels.end) / 2
-        distance = np.hypot(*(points[which] - middle[barrel]).T)
-        half = np.hypot(*(barrels.end - barrels.start).T)[barrel] / 2
-        near = distance <= np.maximum(barrels.diameter[barrel] / 2 + half, reach)
+        widest = float(np.max(np.maximum(barrels.diameter / 2, reach) + np.hypot(*(barrels.end - barrels.start).T) / 2))
+        which, barrel = self._barrels.query(shapely.points(points), predicate="dwithin", distance=widest)
+        distance = point_segment(points[which], barrels.start[barrel], barrels.end[barrel])
+        near = distance <= np.maximum(barrels.diameter[barrel] / 2, reach)
         which, barrel, distance = which[near], barrel[near], distance[near]
         order = np.lexsort((barrel, distance, which))[::-1]
         found[which[order]] = barrel[order]
         return found
+
+
+def inner_points(shape: NDArray[np.object_]) -> Floats:
+    """(n, 2) a point in each polygon: its centroid where that lies in it."""
+    middle = np.asarray(shapely.centroid(shape), object)
+    outside = ~shapely.intersects(shape, middle)
+    middle[outside] = shapely.point_on_surface(shape[outside])
+    return np.asarray(shapely.get_coordinates(middle), np.float64).reshape(-1, 2)
 
 
 def gather(artwork: Artwork, copper: Copper, finder: Finder) -> Evidence:
@@ -96,7 +112,8 @@ def gather(artwork: Artwork, copper: Copper, finder: Finder) -> Evidence:
     unique: dict[tuple[str, str, int], BoardPin] = {}
     for pin in evidence.pins:
         unique.setdefault((pin.component, pin.number, pin.label), pin)
-    evidence.pins = sorted(unique.values(), key=lambda p: (natural(p.component), natural(p.number), p.label))
+    key = cache(natural)  # parts and numbers come again and again
+    evidence.pins = sorted(unique.values(), key=lambda pin: (key(pin.component), key(pin.number), pin.label))
     return evidence
 
 
@@ -123,7 +140,9 @@ def _attributes(copper: Copper, finder: Finder, evidence: Evidence) -> None:
             if len(names) > 1:
                 evidence.ties.add(frozenset(names))
         pinned = np.flatnonzero(drawn)[image.pin[owner] >= 0]
-        places = image.start[layer.object[pinned]]
+        places = image.start[layer.object[pinned]].copy()
+        drawn_pad = image.kind[layer.object[pinned]] == Kind.REGION  # such a pad has no place of its own
+        places[drawn_pad] = inner_points(layer.shape[pinned[drawn_pad]])
         barrel = finder.barrel_at(places)
         for piece, (x, y), hole in zip(pinned.tolist(), places.tolist(), barrel.tolist(), strict=True):
             pin = image.pins[image.pin[layer.object[piece]]]

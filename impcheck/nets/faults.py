@@ -11,7 +11,7 @@ import shapely
 from impcheck.artwork.image import Kind
 from impcheck.artwork.names import natural
 from impcheck.copper.copper import Copper
-from impcheck.nets.evidence import ON_COPPER, Evidence, Finder
+from impcheck.nets.evidence import ON_COPPER, Evidence, Finder, by_count
 from impcheck.nets.meeting import Meetings, Spot
 from impcheck.nets.nets import BoardPin, DeclaredNet, NetFault
 
@@ -19,6 +19,7 @@ from impcheck.nets.nets import BoardPin, DeclaredNet, NetFault
 def find_faults(copper: Copper, finder: Finder, evidence: Evidence, declared: list[DeclaredNet]) -> list[NetFault]:
     """Every short and every open: those of declared nets first, then shorts after opens, by name."""
     search = _Search(copper, finder, evidence, {net.name for net in declared})
+    search.take_declared(declared)
     found = [*_opens(search), *_shorts(search)]
     told = {fault.nets[0] for fault in found if fault.kind == "open"}
     found += [fault for net in declared if net.name not in told for fault in _parted_ends(net)]
@@ -30,12 +31,22 @@ class _Search:
 
     def __init__(self, copper: Copper, finder: Finder, evidence: Evidence, declared: set[str]) -> None:
         self.copper, self.finder, self.evidence, self.declared = copper, finder, evidence, declared
+        self.declared_names: dict[int, Counter[str]] = defaultdict(Counter)
         self.meetings = Meetings(copper, finder, evidence)
         self.pins: dict[tuple[int, str], list[BoardPin]] = defaultdict(list)
         for pin in evidence.pins:
             self.pins[pin.label, pin.net].append(pin)
         numbers = {(pin.component, pin.number) for pin in evidence.pins if pin.component}
         self.pin_count = Counter(component for component, _ in numbers)
+
+    def take_declared(self, declared: list[DeclaredNet]) -> None:
+        """Names that only declarations give, by the ends they name."""
+        for net in declared:
+            for pin in (*net.begin, *net.ends):
+                known = {**self.evidence.attribute_names.get(pin.label, {}), **self.evidence.netlist_names.get(pin.label, {})}
+                if not known:
+                    self.declared_names[pin.label][net.name] += 1
+                    self.evidence.places[pin.label, net.name].append((pin.at, pin.layer))
 
     def nearest(self, one: int, other: int) -> tuple[tuple[float, float], int, float] | None:
         """Where two labels come nearest on one layer: the middle between them, the layer, the distance in mm; None where they share no
@@ -66,9 +77,10 @@ class _Search:
 def _shorts(search: _Search) -> list[NetFault]:
     found: list[NetFault] = []
     told: set[tuple[int, frozenset[str]]] = set()
-    for names_of in (search.evidence.attribute_names, search.evidence.netlist_names):  # each source by itself: they may use different names
+    sources = (search.evidence.attribute_names, search.evidence.netlist_names, search.declared_names)
+    for names_of in sources:  # each by itself: they may use different names
         for label, counted in sorted(names_of.items()):
-            first, *others = _by_count(counted)
+            first, *others = by_count(counted)
             for other in others:
                 pair = frozenset((first, other))
                 if (label, pair) not in told:
@@ -123,7 +135,7 @@ def _renamed(search: _Search, told: set[tuple[int, frozenset[str]]]) -> list[Net
                 labels_of[name].add(label)
     found = []
     for label in sorted(attributes.keys() & netlist.keys()):
-        one, other = _by_count(attributes[label])[0], _by_count(netlist[label])[0]
+        one, other = by_count(attributes[label])[0], by_count(netlist[label])[0]
         if one in netlist[label] or other in attributes[label] or (label, frozenset((one, other))) in told:
             continue
         if len(labels_of[one]) > 1 or len(labels_of[other]) > 1:
@@ -179,8 +191,3 @@ def _parted_ends(net: DeclaredNet) -> list[NetFault]:
         return []
     text = f"net {net.name} is not one piece of copper: nothing joins {pins[0]} to {', '.join(map(str, apart[:4]))}"
     return [NetFault("open", (net.name,), True, False, apart[0].at, apart[0].layer, text)]
-
-
-def _by_count(counted: Counter[str]) -> list[str]:
-    """Names, the most frequent first."""
-    return sorted(counted, key=lambda name: (-counted[name], natural(name)))

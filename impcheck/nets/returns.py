@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Set
 
 import numpy as np
 import shapely
@@ -16,8 +16,11 @@ from impcheck.errors import Problems, Remark, RemarkKind
 SHARE = 0.1  # of the board's area on some layer makes a net a return when the board file names none
 
 
-def named_returns(board: Board, names: Mapping[int, tuple[str, ...]], problems: Problems) -> tuple[frozenset[int], tuple[str, ...]]:
-    """Labels and names of the return nets the board file asks for; a problem for each pattern that means no net."""
+def named_returns(
+    board: Board, names: Mapping[int, tuple[str, ...]], called: Set[str], problems: Problems
+) -> tuple[frozenset[int], tuple[str, ...]]:
+    """Labels and names of the return nets the board file asks for; a problem for each pattern that means no net. `called`: the declared
+    nets, which a pattern does not take in."""
     known = {name for found in names.values() for name in found}
     chosen: set[str] = set()
     for pattern in board.returns:
@@ -25,7 +28,7 @@ def named_returns(board: Board, names: Mapping[int, tuple[str, ...]], problems: 
         if not hits:
             remedy = did_you_mean(pattern, known, "the files name no nets: leave `returns` out to take nets by their area")
             problems.add(board.file, 0, f"return net '{pattern}' is nowhere in the files", remedy)
-        chosen.update(hits)
+        chosen.update(hit for hit in hits if hit == pattern or hit not in called)
     return frozenset(label for label, found in names.items() if chosen & set(found)), tuple(sorted(chosen))
 
 

@@ -13,6 +13,8 @@ from scipy.sparse.csgraph import connected_components
 from impcheck.artwork.image import Floats, Ints, Kind
 from impcheck.copper.copper import Barrels, LayerCopper
 
+Capsules = tuple[Floats, Floats, Floats]  # (n, 2) start, (n, 2) end, (n,) radius
+
 TOUCH = 0.001  # mm: copper that comes this near is joined
 
 
@@ -22,8 +24,9 @@ def label_copper(layers: tuple[LayerCopper, ...], barrels: Barrels) -> tuple[tup
     pieces, count = int(offsets[-1]), len(barrels.diameter)
     edges = [np.empty((0, 2), np.int64)]
     for layer, offset in zip(layers, offsets, strict=False):
-        edges.append(touching(layer) + offset)
-        edges.append(_barrel_edges(layer, barrels, offset, pieces))
+        capsules = _capsules(layer)
+        edges.append(_touching(layer, capsules) + offset)
+        edges.append(_barrel_edges(layer, capsules, barrels, offset, pieces))
     number, labels = _components(np.concatenate(edges), pieces + count)
     per_layer = tuple(labels[a:b].astype(np.int32) for a, b in pairwise(offsets))
     return per_layer, labels[pieces:].astype(np.int32), number
@@ -37,13 +40,13 @@ def _components(edges: NDArray[np.int64], nodes: int) -> tuple[int, NDArray[np.i
     return int(number), labels
 
 
-def touching(layer: LayerCopper) -> NDArray[np.int64]:
+def _touching(layer: LayerCopper, capsules: Capsules) -> NDArray[np.int64]:
     """(m, 2) pairs of pieces of one layer enough to join everything that touches."""
     shape = layer.shape
     if len(shape) < 2:
         return np.empty((0, 2), np.int64)
     a, b = _box_pairs(shape)
-    start, end, radius = _capsules(layer)
+    start, end, radius = capsules
     round_pair = np.isfinite(radius[a]) & np.isfinite(radius[b])
     ra, rb = a[round_pair], b[round_pair]
     near = segment_distance(start[ra], end[ra], start[rb], end[rb]) <= radius[ra] + radius[rb] + TOUCH
@@ -75,13 +78,17 @@ def touching(layer: LayerCopper) -> NDArray[np.int64]:
 
 def _box_pairs(shape: NDArray[np.object_]) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
     bounds = shapely.bounds(shape)
-    boxes = shapely.box(bounds[:, 0] - TOUCH, bounds[:, 1] - TOUCH, bounds[:, 2] + TOUCH, bounds[:, 3] + TOUCH)
-    a, b = shapely.STRtree(shape).query(boxes)
+    a, b = shapely.STRtree(shape).query(_diagonals(bounds[:, :2] - TOUCH, bounds[:, 2:] + TOUCH))
     first = a < b
     return a[first], b[first]
 
 
-def _capsules(layer: LayerCopper) -> tuple[Floats, Floats, Floats]:
+def _diagonals(low: Floats, high: Floats) -> NDArray[np.object_]:
+    """(n,) lines whose bounding boxes are the given ones: cheaper to make than boxes, and an index looks at nothing else."""
+    return np.asarray(shapely.linestrings(np.stack([low, high], axis=1)), object)
+
+
+def _capsules(layer: LayerCopper) -> Capsules:
     """Start, end and radius of pieces that are exactly a round stroke or a round flash; radius nan for all others."""
     image, owner = layer.image, layer.object
     known = owner >= 0
@@ -101,8 +108,8 @@ def _capsules(layer: LayerCopper) -> tuple[Floats, Floats, Floats]:
 def segment_distance(a0: Floats, a1: Floats, b0: Floats, b1: Floats) -> Floats:
     """Distance between segments a0-a1 and b0-b1, each (n, 2): 0 where they cross, else the least end-to-segment distance."""
     best = np.minimum(
-        np.minimum(_point_segment(a0, b0, b1), _point_segment(a1, b0, b1)),
-        np.minimum(_point_segment(b0, a0, a1), _point_segment(b1, a0, a1)),
+        np.minimum(point_segment(a0, b0, b1), point_segment(a1, b0, b1)),
+        np.minimum(point_segment(b0, a0, a1), point_segment(b1, a0, a1)),
     )
     crossing = (_side(a0, a1, b0) * _side(a0, a1, b1) < 0) & (_side(b0, b1, a0) * _side(b0, b1, a1) < 0)
     return np.where(crossing, 0.0, best)
@@ -112,7 +119,8 @@ def _side(a: Floats, b: Floats, p: Floats) -> Floats:
     return np.sign((b[:, 0] - a[:, 0]) * (p[:, 1] - a[:, 1]) - (b[:, 1] - a[:, 1]) * (p[:, 0] - a[:, 0]))
 
 
-def _point_segment(p: Floats, a: Floats, b: Floats) -> Floats:
+def point_segment(p: Floats, a: Floats, b: Floats) -> Floats:
+    """Distance of points from segments a-b, each (n, 2)."""
     d = b - a
     square = np.einsum("ij,ij->i", d, d)
     t = np.clip(np.einsum("ij,ij->i", p - a, d) / np.where(square > 0, square, 1.0), 0.0, 1.0)
@@ -120,22 +128,23 @@ def _point_segment(p: Floats, a: Floats, b: Floats) -> Floats:
     return np.asarray(np.hypot(away[:, 0], away[:, 1]), np.float64)
 
 
-def _barrel_edges(layer: LayerCopper, barrels: Barrels, offset: int, pieces: int) -> NDArray[np.int64]:
+def _barrel_edges(layer: LayerCopper, capsules: Capsules, barrels: Barrels, offset: int, pieces: int) -> NDArray[np.int64]:
+    """(m, 2) pairs of a barrel and a piece of this layer that its drilled disc (of a slot: stadium) touches, as graph nodes."""
     here = np.flatnonzero((barrels.first <= layer.index) & (barrels.last >= layer.index))
     if len(here) == 0 or len(layer.shape) == 0:
         return np.empty((0, 2), np.int64)
-    middle = (barrels.start[here] + barrels.end[here]) / 2
-    round_hole = (barrels.start[here] == barrels.end[here]).all(axis=1)
-    probe = np.asarray(shapely.points(middle), object)
-    for index in np.flatnonzero(~round_hole).tolist():
-        probe[index] = shapely.linestrings([barrels.start[here[index]], barrels.end[here[index]]])
-    reach = barrels.diameter[here] / 2 + TOUCH
-    low, high = (
-        np.minimum(barrels.start[here], barrels.end[here]) - reach[:, None],
-        np.maximum(barrels.start[here], barrels.end[here]) + reach[:, None],
-    )
-    which, piece = shapely.STRtree(layer.shape).query(shapely.box(low[:, 0], low[:, 1], high[:, 0], high[:, 1]))
-    shapely.prepare(layer.shape[np.unique(piece)])
-    hit = shapely.dwithin(layer.shape[piece], probe[which], reach[which])
-    which, piece = which[hit], piece[hit]
-    return np.column_stack([here[which] + pieces, piece + offset])
+    start, end, reach = barrels.start[here], barrels.end[here], barrels.diameter[here] / 2 + TOUCH
+    low, high = np.minimum(start, end) - reach[:, None], np.maximum(start, end) + reach[:, None]
+    which, piece = shapely.STRtree(layer.shape).query(_diagonals(low, high))
+    first, last, radius = capsules
+    simple = np.isfinite(radius[piece])
+    hit = np.zeros(len(piece), bool)
+    a, b = which[simple], piece[simple]
+    hit[simple] = segment_distance(start[a], end[a], first[b], last[b]) <= reach[a] + radius[b]
+    a, b = which[~simple], piece[~simple]
+    probe = np.asarray(shapely.points(start), object)
+    slot = (start != end).any(axis=1)
+    probe[slot] = shapely.linestrings(np.stack([start[slot], end[slot]], axis=1))
+    shapely.prepare(layer.shape[np.unique(b)])
+    hit[~simple] = shapely.dwithin(layer.shape[b], probe[a], reach[a])
+    return np.column_stack([here[which[hit]] + pieces, piece[hit] + offset])

@@ -149,8 +149,8 @@ def test_hostile_files_end_soon(name: str) -> None:
     except InputError as error:
         assert 1 <= len(error.problems) <= 21
         assert len(str(error)) < 10_000
-    # Common practice: a person waits this long without wondering; the files are about 1 MB.
-    assert time.perf_counter() - begin < 10
+    # What this looks for is work without bound, not speed: the files are about 1 MB and take a few seconds at most.
+    assert time.perf_counter() - begin < 60
 
 
 _PIECES = [

