@@ -6,7 +6,6 @@ from __future__ import annotations
 import dataclasses
 from collections.abc import Mapping
 from dataclasses import dataclass
-from functools import cache
 from pathlib import Path
 from typing import Any
 
@@ -47,7 +46,11 @@ def load_deck(board: Board) -> Deck:
             known = sorted(found.stem for found in deck_folder().glob("*.yaml"))
             problems.add(board.file, 0, f"rule deck '{name}' is nowhere", did_you_mean(name, known))
             continue
-        deck, deck_rise = _read(str(path), f"rules/{path.name}" if not Path(name).is_absolute() else path.name, problems)
+        try:
+            deck, deck_rise = _read(str(path), f"rules/{path.name}" if not Path(name).is_absolute() else path.name, problems)
+        except InputError as error:
+            problems.take(error)
+            continue
         rise = deck_rise or rise
         for rule, limits in deck.items():
             values.setdefault(rule, {}).update(limits)
@@ -58,10 +61,13 @@ def load_deck(board: Board) -> Deck:
         if override.rule not in all_rules():
             problems.add(board.file, override.line, f"rule '{override.rule}' is not known", did_you_mean(override.rule, all_rules()))
             del values[override.rule]
-    rules = {name: _typed(rule, values.get(name, {}), problems) for name, rule in all_rules().items()}
+    whole = not problems.found  # what a deck that could not be read leaves out is no mistake of its own
+    rules = {name: _typed(rule, values.get(name, {}), whole, problems) for name, rule in all_rules().items()}
     rise_time = 0.0
     try:
-        rise_time = units.time(rise[0])
+        rise_time = units.time(rise[0], "rise_time")
+        if rise_time <= 0:
+            raise ValueError(f"rise_time '{rise[0]}' is not over zero")
     except ValueError as error:
         problems.add(rise[1], rise[2], str(error), "write a time, as in 500ps")
     problems.raise_if_any()
@@ -72,10 +78,12 @@ def _written(value: object) -> str:
     return f"{value:g}" if isinstance(value, float) else str(value)
 
 
-@cache
 def _tree(path: str, file: str) -> Node:
+    limits = InputLimits()
     try:
-        return compose(Path(path).read_text(encoding="utf-8"), file, InputLimits())
+        if Path(path).stat().st_size > limits.board_file_bytes:
+            raise InputError(Problem(file, 0, "the rule deck is too big", f"limit board_file_bytes = {limits.board_file_bytes:,}"))
+        return compose(Path(path).read_text(encoding="utf-8"), file, limits)
     except (OSError, UnicodeDecodeError):
         raise InputError(Problem(file, 0, "the rule deck cannot be read", "name a YAML file of limits")) from None
 
@@ -92,17 +100,23 @@ def _read(path: str, file: str, problems: Problems) -> tuple[dict[str, dict[str,
         rise = (str(root.value["rise_time"].data()), file, root.keys["rise_time"])
     found: dict[str, dict[str, tuple[str, str, int]]] = {}
     rules = root.value.get("rules")
-    entries = rules.value if rules is not None and isinstance(rules.value, dict) else {}
-    for name, node in entries.items():
-        line = rules.keys[name] if rules is not None else 0
+    if rules is None or not isinstance(rules.value, dict):
+        problems.add(
+            file, root.keys.get("rules", root.line), "the deck holds no rules", "write rules: and below it a mapping of limits for each"
+        )  # noqa: E501
+        return found, rise
+    for name, node in rules.value.items():
+        line = rules.keys[name]
         if name not in all_rules():
             problems.add(file, line, f"rule '{name}' is not known", did_you_mean(name, all_rules()))
-        elif isinstance(node.value, dict):
+        elif not isinstance(node.value, dict):
+            problems.add(file, line, f"the limits of rule '{name}' are no mapping", "write each limit as `name: value` below the rule")
+        else:
             found[name] = {key: (str(value.data()), file, node.keys[key]) for key, value in node.value.items()}
     return found, rise
 
 
-def _typed(rule: Rule, values: dict[str, tuple[str, str, int]], problems: Problems) -> Any:
+def _typed(rule: Rule, values: dict[str, tuple[str, str, int]], whole: bool, problems: Problems) -> Any:
     fields = {field.name: str(field.type) for field in dataclasses.fields(rule.limits)}
     found: dict[str, Any] = {}
     for key, (text, file, line) in values.items():
@@ -114,8 +128,9 @@ def _typed(rule: Rule, values: dict[str, tuple[str, str, int]], problems: Proble
         except ValueError as error:
             problems.add(file, line, f"{rule.name}: {key}: {error}", f"for example {_example(fields[key])}")
     missing = fields.keys() - values.keys()
-    if missing:
-        problems.add("rules", 0, f"no deck gives the limit '{min(missing)}' of the rule {rule.name}", "add the deck `standard`")
+    if missing and whole:
+        said = f"no deck gives the limit '{min(missing)}' of the rule {rule.name}"
+        problems.add("rules", 0, said, "put the deck `standard` first in the board file's rules")
     return rule.limits(**found) if not fields.keys() - found.keys() else None
 
 

@@ -66,8 +66,8 @@ def _none(track: Track, judged: Bools, limits: Limits, context: Context, shortes
     for spot in track.spots(marked, judged, np.where(marked, 1.0, 0.0)):
         if spot.length >= shortest:
             text = (
-                f"over {spot.length:.2f} mm of trace no copper of a return net is near, above, below or beside it: the current has nothing to "
-                "return on and the line no impedance of its own"
+                f"over {spot.length:.2f} mm of trace no copper of a return net is near, above, below or beside it: the current has "
+                "nothing to return on and the line no impedance of its own"
             )
             yield context.finding(RULE, limits.level, track, spot, spot.length, shortest, "mm", text)
 
@@ -199,10 +199,9 @@ def _void_or_slot(spot: Spot, opening: Opening | None, before: int, after: int, 
         closed_end = opening.right if opening.open_left else opening.left
         return f"a slot in {net} that runs out of the plane; the return goes round its closed end, {2 * closed_end:.2f} mm"
     kind = "slot" if across >= SLOT * max(spot.length, 1e-6) else "void"
-    return (
-        f"a {kind} in {net}, {across:.2f} mm across the trace; the return goes round its nearer end, "
-        f"{2 * min(opening.left, opening.right):.2f} mm"
-    )
+    nearer = min(opening.left, opening.right)
+    way = f"the return goes round its nearer end, {2 * nearer:.2f} mm" if nearer > 0 else "the plane still runs under part of the trace"
+    return f"a {kind} in {net}, {across:.2f} mm across the trace; {way}"
 
 
 def _other_side(track: Track, spot: Spot, side: str, context: Context) -> str:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from itertools import pairwise
 
 import numpy as np
@@ -15,6 +16,7 @@ from impcheck.copper.copper import Barrels, LayerCopper
 
 Capsules = tuple[Floats, Floats, Floats]  # (n, 2) start, (n, 2) end, (n,) radius
 
+CHUNK = 2048  # pieces or pairs looked at together
 TOUCH = 0.001  # mm: copper that comes this near is joined
 
 
@@ -40,47 +42,72 @@ def _components(edges: NDArray[np.int64], nodes: int) -> tuple[int, NDArray[np.i
     return int(number), labels
 
 
+class _Joined:
+    """Pieces of one layer joined so far."""
+
+    def __init__(self, count: int) -> None:
+        self.count = count
+        self.pairs = [np.empty((0, 2), np.int64)]
+        self.labels: NDArray[np.int32] = np.arange(count, dtype=np.int32)
+
+    def apart(self, a: NDArray[np.int64], b: NDArray[np.int64]) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+        """Those of the pairs that nothing joins yet."""
+        still = self.labels[a] != self.labels[b]
+        return a[still], b[still]
+
+    def join(self, a: NDArray[np.int64], b: NDArray[np.int64]) -> None:
+        """Joins pairs."""
+        if len(a):
+            self.pairs.append(np.column_stack([a, b]))
+            self.labels = _components(np.concatenate(self.pairs), self.count)[1]
+
+
 def _touching(layer: LayerCopper, capsules: Capsules) -> NDArray[np.int64]:
     """(m, 2) pairs of pieces of one layer enough to join everything that touches."""
     shape = layer.shape
-    if len(shape) < 2:
-        return np.empty((0, 2), np.int64)
-    a, b = _box_pairs(shape)
+    joined = _Joined(len(shape))
     start, end, radius = capsules
-    round_pair = np.isfinite(radius[a]) & np.isfinite(radius[b])
-    ra, rb = a[round_pair], b[round_pair]
-    near = segment_distance(start[ra], end[ra], start[rb], end[rb]) <= radius[ra] + radius[rb] + TOUCH
-    sure = np.column_stack([ra[near], rb[near]])
-    _, labels = _components(sure, len(shape))
-    a, b = a[~round_pair], b[~round_pair]
-    apart = labels[a] != labels[b]
-    a, b = a[apart], b[apart]
+    others = [np.empty((2, 0), np.int64)]
+    for number, pairs in enumerate(_box_pairs(shape)):
+        a, b = joined.apart(*pairs)
+        round_pair = np.isfinite(radius[a]) & np.isfinite(radius[b])
+        ra, rb = a[round_pair], b[round_pair]
+        near = segment_distance(start[ra], end[ra], start[rb], end[rb]) <= radius[ra] + radius[rb] + TOUCH
+        joined.join(ra[near], rb[near])
+        rest = np.stack([a[~round_pair], b[~round_pair]])
+        if number == 0:
+            _join_polygons(shape, joined, rest)
+        else:
+            others.append(rest)
+    _join_polygons(shape, joined, np.concatenate(others, axis=1))
+    return np.concatenate(joined.pairs)
+
+
+def _join_polygons(shape: NDArray[np.object_], joined: _Joined, pairs: NDArray[np.int64]) -> None:
+    a, b = joined.apart(*pairs)
     size = shapely.get_num_coordinates(shape)
     order = np.argsort(-np.maximum(size[a], size[b]), kind="stable")  # big shapes first: what they join needs no second look
     a, b = a[order], b[order]
-    found = [sure]
-    for chunk in np.array_split(np.arange(len(a)), max(1, len(a) // 4096)):
-        ca, cb = a[chunk], b[chunk]
-        open_pair = labels[ca] != labels[cb]
-        ca, cb = ca[open_pair], cb[open_pair]
-        if len(ca) == 0:
-            continue
-        big = np.where(size[ca] >= size[cb], ca, cb)
-        small = np.where(size[ca] >= size[cb], cb, ca)
+    for first in range(0, len(a), CHUNK):
+        ca, cb = joined.apart(a[first : first + CHUNK], b[first : first + CHUNK])
+        big, small = np.where(size[ca] >= size[cb], (ca, cb), (cb, ca))
         shapely.prepare(shape[np.unique(big)])
         hit = shapely.dwithin(shape[big], shape[small], TOUCH)
-        joined = np.column_stack([ca[hit], cb[hit]])
-        if len(joined):
-            found.append(joined)
-            _, labels = _components(np.concatenate(found), len(shape))
-    return np.concatenate(found)
+        joined.join(ca[hit], cb[hit])
 
 
-def _box_pairs(shape: NDArray[np.object_]) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
-    bounds = shapely.bounds(shape)
-    a, b = shapely.STRtree(shape).query(_diagonals(bounds[:, :2] - TOUCH, bounds[:, 2:] + TOUCH))
-    first = a < b
-    return a[first], b[first]
+def _box_pairs(shape: NDArray[np.object_]) -> Iterator[tuple[NDArray[np.int64], NDArray[np.int64]]]:
+    """Pairs of pieces whose boxes meet, in parcels: first those drawn one after the other (strokes that paint an area or make a line mostly
+    touch, and what is joined needs no second look), then all."""
+    bounds = shapely.bounds(shape).reshape(-1, 4)
+    low, high = bounds[:, :2] - TOUCH, bounds[:, 2:] + TOUCH
+    one = np.flatnonzero((low[1:] <= high[:-1]).all(axis=1) & (low[:-1] <= high[1:]).all(axis=1))
+    yield one, one + 1
+    tree, boxes = shapely.STRtree(shape), _diagonals(low, high)
+    for first in range(0, len(shape), CHUNK):
+        a, b = tree.query(boxes[first : first + CHUNK])
+        a = a + first
+        yield a[a < b], b[a < b]
 
 
 def _diagonals(low: Floats, high: Floats) -> NDArray[np.object_]:

@@ -125,3 +125,13 @@ def test_one_object_cut_in_two_is_two():
 
 def test_a_board_without_copper():
     assert count_of("") == 0
+
+
+def test_a_pour_painted_in_diagonal_strokes_is_one_piece_of_copper():
+    # 0.2 mm strokes 0.19 mm apart touch; left out one of them, the pour is two; a loose piece is its own
+    def hatch(left_out=()):
+        return "".join(trace((k * 0.27, 0), (0, k * 0.27)) for k in range(1, 60) if k not in left_out)
+
+    assert count_of(hatch()) == 1
+    assert count_of(hatch(left_out=(30,))) == 2
+    assert count_of(fill(30, 30, 31, 31) + hatch()) == 2
