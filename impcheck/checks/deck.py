@@ -101,9 +101,8 @@ def _read(path: str, file: str, problems: Problems) -> tuple[dict[str, dict[str,
     found: dict[str, dict[str, tuple[str, str, int]]] = {}
     rules = root.value.get("rules")
     if rules is None or not isinstance(rules.value, dict):
-        problems.add(
-            file, root.keys.get("rules", root.line), "the deck holds no rules", "write rules: and below it a mapping of limits for each"
-        )  # noqa: E501
+        said = "write rules: and below it a mapping of limits for each"
+        problems.add(file, root.keys.get("rules", root.line), "the deck holds no rules", said)
         return found, rise
     for name, node in rules.value.items():
         line = rules.keys[name]
