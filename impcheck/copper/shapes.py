@@ -15,6 +15,7 @@ Shapes = NDArray[np.object_]
 Rows = NDArray[np.int64]
 
 COARSEST = math.pi / 4  # radians an arc's chord spans at most, however small the arc
+KEPT = 0.9  # share of the chord error that chords use up: the rest is for the rounding of places and for chords that meet caps
 
 
 def segments_of(radius: float, angle: float, chord_error: float) -> int:
@@ -24,7 +25,7 @@ def segments_of(radius: float, angle: float, chord_error: float) -> int:
 
 def chords(radius: Floats, angle: Floats, chord_error: float) -> Rows:
     """(n,) numbers of chords, as segments_of. The vertices lie on the arc, the chords inside it by radius (1 - cos(step/2)) at most."""
-    ratio = np.minimum(chord_error / np.maximum(radius, chord_error), 1.0)
+    ratio = np.minimum(KEPT * chord_error / np.maximum(radius, chord_error), 1.0)
     step = np.minimum(2.0 * np.arccos(1.0 - ratio), COARSEST)
     return np.maximum(1, np.ceil(np.abs(angle) / step - 1e-9)).astype(np.int64)
 
