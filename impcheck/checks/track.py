@@ -94,9 +94,12 @@ class Track:
         for less than BRIDGE mm, do not part them. `badness` (n,) says how bad each station is; the spot's worst place is the middle of
         its worst stations.
         """
+        where = np.flatnonzero(marked)
+        if not len(where):
+            return
         group: list[int] = []
         good = 0.0
-        for index in range(len(self)):
+        for index in range(int(where[0]), int(where[-1]) + 1):
             if group and (not self.continues(index - 1) or good > BRIDGE):
                 yield self._spot(group, badness)
                 group, good = [], 0.0

@@ -13,6 +13,7 @@ from impcheck.artwork.image import Bools, Floats
 from impcheck.artwork.stackup import Stackup
 from impcheck.copper.copper import Copper
 from impcheck.errors import Remark, RemarkKind
+from impcheck.fields.alongside import alongside
 from impcheck.fields.cross_section import COARSE, Edges, Place, Shape, place_of, section_of
 from impcheck.fields.line import SPEED
 from impcheck.fields.profile import NetProfile, RunProfile
@@ -34,8 +35,9 @@ def profile_nets(
 ) -> tuple[tuple[NetProfile, ...], tuple[Remark, ...]]:
     """Fields of every station of every walk, and remarks on what could not be solved.
 
-    Copper beside a trace counts at 0 V, whether it is a return net or a quiet foreign net (its driver holds it); the own net's other
-    legs stay out of the section. `jobs` processes share the solving; the result does not depend on their number.
+    Copper beside a trace counts at 0 V, whether it is a return net or a quiet foreign net (its driver holds it), and so do foreign traces
+    on the layers between it and its planes where they run alongside for longer than they are away; the own net's other legs stay out of
+    the section. `jobs` processes share the solving; the result does not depend on their number.
     """
     returns = np.zeros(nets.count, bool)
     returns[sorted(nets.returns)] = True
@@ -90,22 +92,32 @@ def _places_of_run(
     (returns, own), (places, known), stations = labels, found_before, run.stations
     fine = np.isin(stations.zone, (Zone.TRACE, Zone.BEND))
     coated = _coated(run, stackup, copper)
-    cuts = {layer: _prepared(cut, stations.centre, returns, own, layer == run.layer) for layer, cut in stations.cuts.items()}
+    cuts = {
+        layer: _prepared(cut, stations.centre, ~own[cut.label] if layer == run.layer else returns[cut.label])
+        for layer, cut in stations.cuts.items()
+    }
+    foreign = {
+        layer: _prepared(stations.cuts[layer], stations.centre, use)
+        for layer, use in alongside(run, stackup, returns, own).items()
+        if use.any()
+    }
     width = np.maximum(np.round(stations.width / GRAIN * 2).astype(np.int64), 1)
     found = np.full(len(stations), -1, np.int64)
     above = [layer for layer in range(run.layer - 1, -1, -1) if layer in cuts]
     below = [layer for layer in range(run.layer + 1, len(stackup.coppers)) if layer in cuts]
     for i in np.flatnonzero(stations.zone != Zone.VIA).tolist():
         key = (run.layer, width[i], fine[i], coated[i], *cuts, *(cut.key(i) for cut in cuts.values()))
+        if foreign:
+            key = (*key, *foreign, *(cut.key(i) for cut in foreign.values()))
         index = known.get(key)
         if index is None:
             half = float(stations.width[i]) / 2
             beside = tuple((a, b) for a, b in cuts[run.layer].edges(i) if a > half - 1e-3 or b < -half + 1e-3)
             upper = [(layer, cuts[layer].edges(i)) for layer in above]
             lower = [(layer, cuts[layer].edges(i)) for layer in below]
-            place = place_of(
-                run.layer, float(stations.width[i]), beside, upper, lower, stackup, bool(coated[i]), factor * (1.0 if fine[i] else COARSE)
-            )
+            between = tuple((layer, cut.edges(i)) for layer, cut in foreign.items())
+            rough = factor * (1.0 if fine[i] else COARSE)
+            place = place_of(run.layer, float(stations.width[i]), beside, upper, lower, stackup, bool(coated[i]), rough, between)
             main = place.main
             nothing = main.closed_above < 0 and main.closed_below < 0 and not main.planes and not main.beside
             index = -1 if nothing else places.setdefault(place, len(places))
@@ -138,9 +150,8 @@ class _Cut:
         return tuple(found)
 
 
-def _prepared(cut: Intervals, centre: Floats, returns: Bools, own: Bools, same_layer: bool) -> _Cut:
-    """Return copper on other layers; everything that is not the own net on the own layer."""
-    use = ~own[cut.label] if same_layer else returns[cut.label]
+def _prepared(cut: Intervals, centre: Floats, use: Bools) -> _Cut:
+    """The entries of a cut to be used, relative to the middle of the trace."""
     count = np.diff(cut.first)
     station = np.repeat(np.arange(len(count)), count)
     first = np.concatenate([[0], np.cumsum(np.bincount(station[use], minlength=len(count)))])

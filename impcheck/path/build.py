@@ -11,8 +11,9 @@ from impcheck.copper.copper import Copper
 from impcheck.nets.nets import DeclaredNet, Nets
 from impcheck.path.branches import find_branches
 from impcheck.path.graph import Graph, build_graph
+from impcheck.path.part import LegFacts
 from impcheck.path.route import Leg, Route, cut_route, find_route
-from impcheck.path.stations import LegFacts, Measure
+from impcheck.path.stations import Measure
 from impcheck.path.walk import Branch, Run, Stations, Walk, Zone
 
 MIN_LEG = 1e-4  # mm

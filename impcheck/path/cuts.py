@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import numpy as np
 import shapely
 from numpy.typing import NDArray
@@ -11,7 +13,6 @@ from impcheck.path.edges import LayerEdges, LocalEdges, Windows
 from impcheck.path.walk import Intervals
 
 HAIRLINE = 0.015  # mm: gaps in a plane below this are slits between the cut-ins of a layout tool
-TIE = 1e-12  # mm: where copper ends and begins at one place it begins first, so that touching pieces are one interval
 _STRIDE = 4.0  # more than any window is long
 
 
@@ -30,60 +31,114 @@ def cut(
     (window, s) must be rising. Within one label intervals that overlap, touch, or leave a gap below `hairline` are merged. A cut through a
     vertex counts the edge that leads to larger s (half-open rule), so that no crossing is counted twice or lost.
     """
-    count = len(s)
-    station, t, sign, piece = _crossings(local, window, s)
+    pairs = _pairs(edges, local)
+    by_piece = _Slots(pairs.window, window)
+    by_label = _Slots(pairs.team_window, window)
+    edge, station, t, sign = _crossings(local, window, s)
     inside = np.abs(t) < reach[station]
-    # pieces with no crossing within reach, or whose first crossing leaves them, hold the start of the cut
-    station_in, t_in, sign_in, piece_in = station[inside], t[inside], sign[inside], piece[inside]
-    pieces = np.int64(max(len(edges.shape), 1))
-    key = station_in * pieces + piece_in
-    order = np.lexsort((t_in - TIE * sign_in, key))
-    station_in, t_in, sign_in, piece_in, key = station_in[order], t_in[order], sign_in[order], piece_in[order], key[order]
-    fresh = np.ones(len(key), dtype=np.bool_)
-    fresh[1:] = key[1:] != key[:-1]
-    final = np.ones(len(key), dtype=np.bool_)
-    final[:-1] = key[1:] != key[:-1]
-    opened = fresh & (sign_in < 0)
-    left_open = final & (sign_in > 0)
-    full_station, full_piece = _whole_width(edges, local, windows, window, s, crossed=key, pieces=pieces)
-    all_station = np.concatenate([station_in, station_in[opened], station_in[left_open], full_station, full_station])
-    all_piece = np.concatenate([piece_in, piece_in[opened], piece_in[left_open], full_piece, full_piece])
-    all_t = np.concatenate([t_in, -reach[station_in[opened]], reach[station_in[left_open]], -reach[full_station], reach[full_station]])
-    all_sign = np.concatenate(
-        [
-            sign_in,
-            np.ones(np.count_nonzero(opened), np.int64),
-            -np.ones(np.count_nonzero(left_open), np.int64),
-            np.ones(len(full_station), np.int64),
-            -np.ones(len(full_station), np.int64),
-        ]
-    )
-    label = edges.labels[all_piece].astype(np.int64)
-    order = np.lexsort((all_t - TIE * all_sign, all_station * (np.int64(edges.labels.max(initial=0)) + 1) + label))
-    depth = np.cumsum(all_sign[order])
-    begins = np.flatnonzero((depth == 1) & (all_sign[order] == 1))
-    finishes = np.flatnonzero(depth == 0)
-    low, high = all_t[order][begins], all_t[order][finishes]
-    where, whose = all_station[order][begins], label[order][begins]
+    edge, station, t, sign = edge[inside], station[inside], t[inside], sign[inside]
+    pair = pairs.of_edge[edge]
+    key, order = _ordered(by_label.slot(pairs.team[pair], station), t, len(by_label), after=sign < 0)
+    t, sign = t[order], sign[order]
+    slot = by_piece.slot(pair[order], station[order])
+    held = _held_at_start(edges, windows, window, s, pairs, by_piece, slot, sign)
+    team_slot = by_label.slot(pairs.team[by_piece.owner()], by_piece.station())
+    depth_first = np.bincount(team_slot, held, len(by_label)).astype(np.int64)
+    depth_last = depth_first + np.bincount(key, sign, len(by_label)).astype(np.int64)
+    before = np.cumsum(depth_first - np.concatenate([[0], depth_last[:-1]])) if len(by_label) else depth_first
+    depth = np.cumsum(sign) + before[key]
+    of_slot = by_label.station()
+    begins, starts = np.flatnonzero((depth == 1) & (sign > 0)), np.flatnonzero(depth_first > 0)
+    finishes, ends = np.flatnonzero((depth == 0) & (sign < 0)), np.flatnonzero(depth_last > 0)
+    where = np.concatenate([starts, key[begins]])
+    order = np.argsort(where, kind="stable")
+    where, low = where[order], np.concatenate([-reach[of_slot[starts]], t[begins]])[order]
+    order = np.argsort(np.concatenate([key[finishes], ends]), kind="stable")
+    high = np.concatenate([t[finishes], reach[of_slot[ends]]])[order]
     if hairline > 0 and len(low):
-        close = (where[1:] == where[:-1]) & (whose[1:] == whose[:-1]) & (low[1:] - high[:-1] < hairline)
-        low, where, whose = (
-            low[np.concatenate([[True], ~close])],
-            where[np.concatenate([[True], ~close])],
-            whose[np.concatenate([[True], ~close])],
-        )
-        high = high[np.concatenate([~close, [True]])]
+        apart = (where[1:] != where[:-1]) | (low[1:] - high[:-1] >= hairline)
+        first, last = np.concatenate([[True], apart]), np.concatenate([apart, [True]])
+        low, high, where = low[first], high[last], where[first]
     thick = high - low > 1e-9
-    low, high, where, whose = low[thick], high[thick], where[thick], whose[thick]
-    order = np.lexsort((high, low, where))
-    first = np.searchsorted(where[order], np.arange(count + 1)).astype(np.int32)
-    return Intervals(first, low[order], high[order], whose[order].astype(np.int32))
+    low, high, where = low[thick], high[thick], where[thick]
+    station, order = _ordered(of_slot[where], low, len(s))
+    label = pairs.team_label[by_label.owner()[where[order]]]
+    return Intervals(np.searchsorted(station, np.arange(len(s) + 1)).astype(np.int32), low[order], high[order], label)
+
+
+class _Slots:
+    """Room for every cut of every owner: owner k, which belongs to one window, has a slot for each cut of that window."""
+
+    def __init__(self, window_of_owner: NDArray[np.int64], window: NDArray[np.int64]) -> None:
+        """`window` (cuts,) is rising."""
+        self.first = np.searchsorted(window, window_of_owner, side="left")
+        self.size = np.searchsorted(window, window_of_owner, side="right") - self.first
+        stop = np.cumsum(self.size)
+        self.offset = stop - self.size
+        self._count = int(stop[-1]) if len(stop) else 0
+
+    def __len__(self) -> int:
+        return self._count
+
+    def slot(self, owner: NDArray[np.int64], cut_index: NDArray[np.int64]) -> NDArray[np.int64]:
+        """Slots of pairs of an owner and a cut of its window."""
+        result: NDArray[np.int64] = (self.offset - self.first)[owner] + cut_index
+        return result
+
+    def owner(self) -> NDArray[np.int64]:
+        """(slots,) owner of each slot."""
+        return np.repeat(np.arange(len(self.size)), self.size)
+
+    def station(self) -> NDArray[np.int64]:
+        """(slots,) cut of each slot."""
+        result: NDArray[np.int64] = np.arange(self._count) + np.repeat(self.first - self.offset, self.size)
+        return result
+
+
+@dataclass(frozen=True)
+class _Pairs:
+    """Pairs of a window and a piece in it, those with edges in the window first; a team is the pairs of one window and one label."""
+
+    window: NDArray[np.int64]  # (pairs,)
+    piece: NDArray[np.int64]
+    team: NDArray[np.int64]
+    solid: int  # pairs from here on have no edge: the piece covers the whole window
+    of_edge: NDArray[np.int64]  # (edges,) pair of each edge
+    team_window: NDArray[np.int64]  # (teams,)
+    team_label: NDArray[np.int32]
+
+
+def _pairs(edges: LayerEdges, local: LocalEdges) -> _Pairs:
+    pieces = np.int64(max(len(edges.shape), 1))
+    met = local.window * pieces + local.piece
+    changes = np.ones(len(met), dtype=np.bool_)
+    changes[1:] = met[1:] != met[:-1]
+    active, pair = np.unique(met[changes], return_inverse=True)
+    window = np.concatenate([active // pieces, local.solid_window])
+    piece = np.concatenate([active % pieces, local.solid_piece])
+    labels = np.int64(edges.labels.max(initial=0)) + 1
+    teams, team = np.unique(window * labels + edges.labels[piece], return_inverse=True)
+    of_edge = pair[np.cumsum(changes) - 1] if len(met) else pair
+    return _Pairs(window, piece, team, len(active), of_edge, teams // labels, (teams % labels).astype(np.int32))
+
+
+def _ordered(group: NDArray[np.int64], t: Floats, groups: int, after: Bools | None = None) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """Groups in rising order, and the order that sorts by group, then t, then `after`: by one whole number that holds all three, four times
+    faster than by keys one after the other. What lies closer than about 1e-12 mm counts as one place, so that touching pieces, whose next
+    one begins where the last one ends, are one interval."""
+    bits = 61 - max(groups, 1).bit_length()
+    bound = float(np.abs(t).max(initial=0.0)) + 1e-3
+    key = (group << (bits + 1)) | ((t / bound + 1.0) * float(1 << (bits - 1))).astype(np.int64) << 1
+    if after is not None:
+        key |= after
+    order = np.argsort(key, kind="stable")
+    return group[order], order
 
 
 def _crossings(
     local: LocalEdges, window: NDArray[np.int64], s: Floats
-) -> tuple[NDArray[np.int64], Floats, NDArray[np.int64], NDArray[np.int64]]:
-    """Station, t, +1 (entering copper towards larger t) or -1, and piece of every crossing of an edge with a cut."""
+) -> tuple[NDArray[np.int64], NDArray[np.int64], Floats, NDArray[np.int64]]:
+    """Edge, station, t, and +1 (entering copper towards larger t) or -1 of every crossing of an edge with a cut."""
     key = window * _STRIDE + s
     low = np.clip(np.minimum(local.s0, local.s1), -0.5, _STRIDE - 1)
     high = np.clip(np.maximum(local.s0, local.s1), -0.5, _STRIDE - 1)
@@ -92,48 +147,33 @@ def _crossings(
     size = np.maximum(last - first, 0)
     edge = np.repeat(np.arange(len(size)), size)
     station = np.arange(len(edge)) - np.repeat(np.cumsum(size) - size, size) + first[edge]
-    run = local.s1[edge] - local.s0[edge]
-    share = (s[station] - local.s0[edge]) / run
-    t = local.t0[edge] + share * (local.t1[edge] - local.t0[edge])
-    return station, t, np.where(run > 0, 1, -1).astype(np.int64), local.piece[edge]
+    s0, t0 = local.s0[edge], local.t0[edge]
+    run = local.s1[edge] - s0
+    t = t0 + (s[station] - s0) / run * (local.t1[edge] - t0)
+    return edge, station, t, np.where(run > 0, 1, -1).astype(np.int64)
 
 
-def _whole_width(
+def _held_at_start(
     edges: LayerEdges,
-    local: LocalEdges,
     windows: Windows,
     window: NDArray[np.int64],
     s: Floats,
-    *,
-    crossed: NDArray[np.int64],
-    pieces: np.int64,
-) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
-    """Pairs of a cut and a piece that covers all of it: pieces with no edge in the window, or with edges there that miss this cut.
-    `crossed`, sorted: station * pieces + piece of the pairs that do meet."""
-    first = np.searchsorted(window, local.solid_window, side="left")
-    last = np.searchsorted(window, local.solid_window, side="right")
-    size = last - first
-    which = np.repeat(np.arange(len(size)), size)
-    solid_station = np.arange(len(which)) - np.repeat(np.cumsum(size) - size, size) + first[which]
-    solid_piece = local.solid_piece[which]
-    met = local.window * pieces + local.piece
-    changes = np.ones(len(met), dtype=np.bool_)
-    changes[1:] = met[1:] != met[:-1]
-    active = np.unique(met[changes])
-    active_window, active_piece = active // pieces, active % pieces
-    first = np.searchsorted(window, active_window, side="left")
-    last = np.searchsorted(window, active_window, side="right")
-    size = last - first
-    which = np.repeat(np.arange(len(size)), size)
-    station = np.arange(len(which)) - np.repeat(np.cumsum(size) - size, size) + first[which]
-    piece = active_piece[which]
-    pair = station * pieces + piece
-    found = np.minimum(np.searchsorted(crossed, pair), max(len(crossed) - 1, 0))
-    missed = crossed[found] != pair if len(crossed) else np.ones(len(pair), dtype=np.bool_)
-    station, piece = station[missed], piece[missed]
+    pairs: _Pairs,
+    by_piece: _Slots,
+    slot: NDArray[np.int64],
+    sign: NDArray[np.int64],
+) -> NDArray[np.int8]:
+    """(slots,) 1 where the piece holds the start of the cut, at -reach: the first of the crossings, given in rising order of t within each
+    slot, leaves it; or there is none and it covers the whole cut."""
+    held = np.full(len(by_piece), -1, dtype=np.int8)
+    held[slot[::-1]] = sign[::-1] < 0  # the last one written is the first crossing
+    solid = int(by_piece.offset[pairs.solid]) if pairs.solid < len(pairs.window) else len(by_piece)
+    held[solid:] = 1
+    missed = np.flatnonzero(held < 0)
+    station, piece = by_piece.station()[missed], pairs.piece[by_piece.owner()[missed]]
     point = windows.origin[window[station]] + windows.heading[window[station]] * s[station][:, None]
-    inside: Bools = shapely.contains_xy(edges.shape[piece], point[:, 0], point[:, 1])
-    return np.concatenate([solid_station, station[inside]]), np.concatenate([solid_piece, piece[inside]])
+    held[missed] = shapely.contains_xy(edges.shape[piece], point[:, 0], point[:, 1])
+    return held
 
 
 def coverage(cuts: Intervals, low: Floats, high: Floats, wanted: Bools, where: Bools) -> Floats:

@@ -5,13 +5,13 @@ A window is a straight piece of centreline with a half-width: s runs along it fr
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import shapely
 from numpy.typing import NDArray
 
-from impcheck.artwork.image import Floats, Ints
+from impcheck.artwork.image import Bools, Floats, Ints
 from impcheck.copper.copper import LayerCopper
 
 MAX_WINDOW = 1.0  # mm, longest window
@@ -31,23 +31,27 @@ class Windows:
     def __len__(self) -> int:
         return len(self.length)
 
+    def middle(self) -> Floats:
+        """(n, 2) middles."""
+        result: Floats = self.origin + self.heading * (self.length / 2)[:, None]
+        return result
+
     def boxes(self, margin: float = 0.0) -> NDArray[np.object_]:
-        """(n,) bounding boxes as shapely polygons."""
+        """(n,) bounding boxes, as the lines from corner to corner that have them (for a spatial index, and made faster than polygons)."""
         normal = np.stack([-self.heading[:, 1], self.heading[:, 0]], axis=1)
-        middle = self.origin + self.heading * (self.length / 2)[:, None]
+        middle = self.middle()
         half = np.abs(self.heading) * (self.length / 2 + margin)[:, None] + np.abs(normal) * (self.reach + margin)[:, None]
         low, high = middle - half, middle + half
-        return np.asarray(shapely.box(low[:, 0], low[:, 1], high[:, 0], high[:, 1]), dtype=object)
+        return diagonals(low, high)
 
     def take(self, which: NDArray[np.int64] | NDArray[np.bool_]) -> Windows:
         """The windows at `which` (mask or indices)."""
         return Windows(self.origin[which], self.heading[which], self.length[which], self.reach[which])
 
 
-def boxes_of(shapes: NDArray[np.object_]) -> NDArray[np.object_]:
-    """(n,) bounding boxes of n shapes, as shapely polygons."""
-    low_x, low_y, high_x, high_y = shapely.bounds(shapes).reshape(-1, 4).T
-    return np.asarray(shapely.box(low_x, low_y, high_x, high_y), dtype=object)
+def diagonals(low: Floats, high: Floats) -> NDArray[np.object_]:
+    """(n,) lines between the corners (n, 2) of boxes."""
+    return np.asarray(shapely.linestrings(np.stack([low, high], axis=1)), dtype=object)
 
 
 @dataclass(frozen=True)
@@ -64,22 +68,23 @@ class LocalEdges:
     solid_window: NDArray[np.int64]  # windows that lie wholly inside a piece, none of its edges in reach
     solid_piece: NDArray[np.int64]
 
+    def renumbered(self, windows: NDArray[np.int64]) -> LocalEdges:
+        """Edges of a choice of windows with the numbers the windows have in the whole."""
+        return replace(self, window=windows[self.window], solid_window=windows[self.solid_window])
+
 
 class LayerEdges:
     """Index of the edges of one copper layer near given windows."""
 
-    def __init__(self, layer: LayerCopper, labels: Ints, near: NDArray[np.object_]) -> None:
-        """`labels` (pieces,) and `near`, boxes outside which nothing will be asked."""
+    def __init__(self, layer: LayerCopper, labels: Ints, near: shapely.STRtree) -> None:
+        """`labels` (pieces,) and `near`, an index of boxes outside which nothing will be asked."""
         self.shape = layer.shape
         self.labels = labels
-        self._pieces = shapely.STRtree(near)
-        boxes = boxes_of(layer.shape)
-        hit, _ = self._pieces.query(boxes, predicate="intersects") if len(near) and len(boxes) else (np.empty(0, dtype=np.int64), None)
-        self.used = np.unique(hit)
-        self.tree = shapely.STRtree(boxes[self.used])
+        self.used = np.unique(near.query(layer.shape)[0]) if len(near) and len(layer.shape) else np.empty(0, dtype=np.int64)
+        self.tree = shapely.STRtree(layer.shape[self.used])
+        self._bounds = shapely.bounds(layer.shape[self.used]).reshape(-1, 4)
         shapely.prepare(layer.shape[self.used])
-        rings, owner = shapely.get_rings(layer.shape[self.used], return_index=True)
-        points, ring = shapely.get_coordinates(rings, return_index=True)
+        points, ring, owner = _rings(layer.shape[self.used])
         last = np.ones(len(ring), dtype=np.bool_)
         last[:-1] = ring[1:] != ring[:-1]
         first = np.flatnonzero(~last)
@@ -117,11 +122,11 @@ class LayerEdges:
         self.chunk_first = np.append(first, count)
         low = np.minimum.reduceat(np.minimum(self.start, self.end), first, axis=0)
         high = np.maximum.reduceat(np.maximum(self.start, self.end), first, axis=0)
-        self.chunks = shapely.STRtree(shapely.box(low[:, 0], low[:, 1], high[:, 0], high[:, 1]))
+        self.chunks = shapely.STRtree(diagonals(low, high))
 
     def local(self, windows: Windows) -> LocalEdges:
         """All edges within reach of each window, in its coordinates."""
-        boxes = windows.boxes()
+        boxes = windows.boxes(2 * ROUNDING)  # a vertex on the border of two windows belongs to both
         nothing = np.empty(0, dtype=np.int64)
         window, chunk = self.chunks.query(boxes) if len(self.start) and len(windows) else (nothing, nothing)
         order = np.argsort(window, kind="stable")
@@ -129,28 +134,52 @@ class LayerEdges:
         first, size = self.chunk_first[chunk], self.chunk_first[chunk + 1] - self.chunk_first[chunk]
         stop = np.cumsum(size)
         edge = np.repeat(first - (stop - size), size) + np.arange(int(size.sum()))
-        s0, t0 = _project(windows, np.repeat(window, size), self.start[edge])
-        s1, t1 = np.empty_like(s0), np.empty_like(t0)
-        s1[:-1], t1[:-1] = s0[1:], t0[1:]  # within a chunk an edge ends where the next begins
-        if len(stop):
-            s1[stop - 1], t1[stop - 1] = _project(windows, window, self.end[first + size - 1])
-        window = np.repeat(window, size)
-        reach = windows.reach[window]
-        keep = (np.minimum(t0, t1) <= reach) & (np.maximum(t0, t1) >= -reach)
-        # A vertex at the very end of a window may lie a rounding error outside it, and one of its two edges must stay.
-        keep &= (np.minimum(s0, s1) <= windows.length[window] + ROUNDING) & (np.maximum(s0, s1) >= -ROUNDING)
-        window, edge = window[keep], edge[keep]
+        s0, t0 = _project(windows, window, self.start[edge], size)
+        last = stop - 1
+        s_last, t_last = _project(windows, window, self.end[first + size - 1])
+        # an edge is left out where both its ends lie beyond one side of the window
+        beyond = _beyond(windows, np.repeat(window, size), s0, t0)
+        beyond_next = np.concatenate([beyond[1:], beyond[:1]])  # within a chunk an edge ends where the next begins
+        beyond_next[last] = _beyond(windows, window, s_last, t_last)
+        kept = np.flatnonzero((beyond & beyond_next) == 0)
+        s1, t1 = np.concatenate([s0[1:], s0[:1]]), np.concatenate([t0[1:], t0[:1]])
+        s1[last], t1[last] = s_last, t_last
+        window, edge = np.repeat(window, size)[kept], edge[kept]
         solid_window, solid_piece = self._solid(windows, boxes, window, self.piece[edge])
-        return LocalEdges(window, self.piece[edge], s0[keep], t0[keep], s1[keep], t1[keep], self.turn[edge], solid_window, solid_piece)
+        return LocalEdges(window, self.piece[edge], s0[kept], t0[kept], s1[kept], t1[kept], self.turn[edge], solid_window, solid_piece)
+
+    def distance(self, point: Floats, wanted: Bools, limit: float) -> Floats:
+        """(n,) distance from points (n, 2) to copper of `wanted` labels, at most `limit`."""
+        result = np.full(len(point), limit)
+        if not len(self.start) or not len(point):
+            return result
+        at, chunk = self.chunks.query(diagonals(point - limit, point + limit))
+        first, size = self.chunk_first[chunk], self.chunk_first[chunk + 1] - self.chunk_first[chunk]
+        edge = np.repeat(first - (np.cumsum(size) - size), size) + np.arange(int(size.sum()))
+        at = np.repeat(at, size)
+        use = wanted[self.labels[self.piece[edge]]]
+        at, edge = at[use], edge[use]
+        along, offset = self.end[edge] - self.start[edge], point[at] - self.start[edge]
+        share = np.clip(np.einsum("ij,ij->i", along, offset) / np.einsum("ij,ij->i", along, along), 0.0, 1.0)
+        np.minimum.at(result, at, np.hypot(*(offset - share[:, None] * along).T))
+        at, used = self.tree.query(shapely.points(point))
+        piece = self.used[used]
+        use = wanted[self.labels[piece]]
+        at, piece = at[use], piece[use]
+        result[at[shapely.intersects_xy(self.shape[piece], point[at, 0], point[at, 1])]] = 0.0
+        return result
 
     def _solid(
         self, windows: Windows, boxes: NDArray[np.object_], window: NDArray[np.int64], piece: NDArray[np.int64]
     ) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
         if not len(self.used) or not len(windows):
             return np.empty(0, np.int64), np.empty(0, np.int64)
-        middle = windows.origin + windows.heading * (windows.length / 2)[:, None]
-        candidate, used = self.tree.query(shapely.points(middle))
-        candidate_piece = self.used[used]
+        middle = windows.middle()
+        candidate, used = self.tree.query(boxes)
+        low_x, low_y, high_x, high_y = self._bounds[used].T
+        x, y = middle[candidate].T
+        over = (low_x <= x) & (x <= high_x) & (low_y <= y) & (y <= high_y)
+        candidate, candidate_piece = candidate[over], self.used[used[over]]
         count = len(self.shape)
         met = window * count + piece
         changes = np.ones(len(met), dtype=np.bool_)
@@ -161,10 +190,31 @@ class LayerEdges:
         return candidate[inside], candidate_piece[inside]
 
 
-def _project(windows: Windows, window: NDArray[np.int64], point: Floats) -> tuple[Floats, Floats]:
-    offset = point - windows.origin[window]
-    heading = windows.heading[window]
-    return (
-        offset[:, 0] * heading[:, 0] + offset[:, 1] * heading[:, 1],
-        offset[:, 1] * heading[:, 0] - offset[:, 0] * heading[:, 1],
-    )
+def _project(windows: Windows, window: NDArray[np.int64], point: Floats, size: NDArray[np.int64] | None = None) -> tuple[Floats, Floats]:
+    """s and t of points, one for each of `window`, or `size` of them in a row."""
+    turned = np.column_stack([windows.origin, windows.heading])[window]
+    if size is not None:
+        turned = np.repeat(turned, size, axis=0)
+    x, y = point[:, 0] - turned[:, 0], point[:, 1] - turned[:, 1]
+    return x * turned[:, 2] + y * turned[:, 3], y * turned[:, 2] - x * turned[:, 3]
+
+
+def _rings(shapes: NDArray[np.object_]) -> tuple[Floats, NDArray[np.int64], NDArray[np.int64]]:
+    """Points of all rings of polygons, the number of the ring of each point, and the polygon of each ring."""
+    holed = np.flatnonzero(shapely.get_num_interior_rings(shapes) > 0)
+    plain = np.setdiff1d(np.arange(len(shapes)), holed, assume_unique=True)
+    points, ring = shapely.get_coordinates(shapes[plain], return_index=True)  # polygons of one ring need no ring objects
+    rings, owner = shapely.get_rings(shapes[holed], return_index=True)
+    more, ring_of_more = shapely.get_coordinates(rings, return_index=True)
+    return np.concatenate([points, more]), np.concatenate([ring, ring_of_more + len(plain)]), np.concatenate([plain, holed[owner]])
+
+
+def _beyond(windows: Windows, window: NDArray[np.int64], s: Floats, t: Floats) -> NDArray[np.uint8]:
+    """One bit for each side of the window that a point lies beyond. A vertex at the very end of a window may lie a rounding error outside
+    it, and one of its two edges must stay."""
+    reach = windows.reach[window]
+    code = (t > reach).view(np.uint8)
+    code |= (t < -reach).view(np.uint8) << 1
+    code |= (s > windows.length[window] + ROUNDING).view(np.uint8) << 2
+    code |= (s < -ROUNDING).view(np.uint8) << 3
+    return code

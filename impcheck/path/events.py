@@ -16,6 +16,8 @@ LONGEST = 1.0  # mm between events
 TAPER = 0.03  # share of the width by which a tapered trace may change in one station
 GAP_SHARE = 0.15  # share of the gap by which it may change in one station
 BESIDE = (0.1, 0.2, 0.4, 0.8)  # mm from the trace's edge: lines on which outlines of neighbours are looked for
+BESIDE_HEIGHTS = 3.0  # heights from the trace's edge: copper that comes no nearer makes no events (farther out it changes 0.1 to 0.2 %)
+BESIDE_LEAST, BESIDE_MOST = 0.3, 1.0  # mm, bounds of that; copper of declared nets makes events out to the greater one, at any height
 CURVE_STEP = 0.2  # mm between events on a curve
 CORNER = np.radians(20.0)
 PAD_FROM = 0.75  # widths from the centreline: own copper that reaches farther is a pad or teardrop, followed more coarsely
@@ -51,10 +53,21 @@ def _slanted(local: LocalEdges, keep: Bools, step: Floats, places: Places) -> No
 
 
 def own_layer(
-    frame: Frame, local: LocalEdges, own: Bools, stroke: Bools, hidden: Bools, *, sure: Places, loose: Places, weak: Places
+    frame: Frame,
+    local: LocalEdges,
+    own: Bools,
+    declared: Bools,
+    stroke: Bools,
+    hidden: Bools,
+    *,
+    height: Floats,
+    sure: Places,
+    loose: Places,
+    weak: Places,
 ) -> None:
-    """Events on the run's own layer. `own` (edges,): of the same net; `stroke` (edges,): of a round stroke, whose ends lie hidden in the
-    next one. `hidden` (edges,): the edge ends inside other copper of the net."""
+    """Events on the run's own layer. `own` (edges,): of the same net; `declared` (edges,): of any declared net; `stroke` (edges,): of a
+    round stroke, whose ends lie hidden in the next one. `hidden` (edges,): the edge ends inside other copper of the net. `height`
+    (windows,) over the reference."""
     width = frame.width[local.window]
     near, far = np.minimum(np.abs(local.t0), np.abs(local.t1)), np.maximum(np.abs(local.t0), np.abs(local.t1))
     rise, run = far - near, np.abs(local.s1 - local.s0)
@@ -70,17 +83,20 @@ def own_layer(
     for share in PAD_LINES:
         for side in (-1.0, 1.0):
             _crossings(local, own, side * share * frame.width, loose)
-    foreign = ~own
     back_s, back_t = _extremes(local)
-    beside = np.minimum(frame.windows.reach[local.window], width / 2 + 1.0)
+    gap = np.maximum(near - width / 2, 0.0)
+    limit = np.where(declared, BESIDE_MOST, np.clip(BESIDE_HEIGHTS * height, BESIDE_LEAST, BESIDE_MOST)[local.window])
+    close = np.zeros(int(local.piece.max(initial=0)) + 1, dtype=np.bool_)
+    close[local.piece[gap <= limit]] = True  # a piece that comes near somewhere is followed to its ends
+    foreign = ~own & close[local.piece]
+    beside = np.minimum(frame.windows.reach[local.window], width / 2 + BESIDE_MOST)
     corner = foreign & (np.abs(local.t1) < beside) & (back_s | back_t | (np.abs(local.turn) > CORNER))
     hit = np.flatnonzero(corner)
     weak.append((local.window[hit], local.s1[hit]))
     for distance in BESIDE:
         for side in (-1.0, 1.0):
             _crossings(local, foreign, side * (frame.width / 2 + distance), weak)
-    gap = np.maximum(near - width / 2, 0.05)
-    _slanted(local, foreign & (near < width / 2 + 0.8), GAP_SHARE * gap, weak)
+    _slanted(local, foreign & (gap < 0.8), GAP_SHARE * np.maximum(gap, 0.05), weak)
 
 
 def plane_layer(frame: Frame, local: LocalEdges, wanted: Bools, height: Floats, *, sure: Places, weak: Places) -> None:

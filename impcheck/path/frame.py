@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -32,6 +32,10 @@ class Frame:
         window = np.maximum(window, self.first[leg])
         return window, np.clip(s - self.base[window], 0.0, self.windows.length[window])
 
+    def reaching(self, reach: Floats) -> Frame:
+        """The frame with another reach of its legs (l,)."""
+        return replace(self, windows=replace(self.windows, reach=reach[self.leg]))
+
 
 CURVE = np.radians(12.0)  # vertices that turn less, beside a short segment, belong to a chopped curve
 CURVE_SEGMENT = 0.4  # mm
@@ -48,8 +52,8 @@ def corners(frame: Frame) -> tuple[NDArray[np.int64], NDArray[np.int64], Floats]
     return after[corner], after[curve], turn[corner]
 
 
-def make_frame(legs: Sequence[Leg], reach: Floats) -> Frame:
-    """Chops legs into windows of equal length, at most MAX_WINDOW long, one or more for each segment; `reach` (l,)."""
+def make_frame(legs: Sequence[Leg], reach: Floats, usual: Floats) -> Frame:
+    """Chops legs into windows of equal length, at most MAX_WINDOW long, one or more for each segment; `reach` and `usual` width (l,)."""
     if not legs:
         empty = np.empty(0)
         nothing = np.empty(0, dtype=np.int64)
@@ -59,7 +63,6 @@ def make_frame(legs: Sequence[Leg], reach: Floats) -> Frame:
     owner = np.repeat(np.arange(len(legs)), [len(leg.line) - 1 for leg in legs])
     drawn = np.concatenate([leg.width for leg in legs])
     # a link has no width of its own worth naming: it takes the usual width of its leg
-    usual = np.array([usual_width(leg) for leg in legs])
     width = np.where(np.concatenate([leg.link for leg in legs]) > 0, usual[owner], drawn)
     size = np.hypot(*(end - start).T)
     before = np.cumsum(size) - size

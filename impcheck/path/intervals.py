@@ -58,6 +58,17 @@ def spread(few: Intervals, mine: NDArray[np.int64], count: int) -> Intervals:
     return Intervals(np.concatenate([[0], np.cumsum(size)]).astype(np.int32), few.low, few.high, few.label)
 
 
+def joined(one: Intervals, two: Intervals) -> Intervals:
+    """Intervals of two sets of the same stations, each station having entries in one of them at most."""
+    if not len(one.low) or not len(two.low):
+        return one if len(one.low) else two
+    size_one, size_two = np.diff(one.first), np.diff(two.first)
+    station = np.concatenate([np.repeat(np.arange(len(size)), size) for size in (size_one, size_two)])
+    order = np.argsort(station, kind="stable")
+    low, high, label = (np.concatenate([getattr(part, name) for part in (one, two)])[order] for name in ("low", "high", "label"))
+    return Intervals(np.concatenate([[0], np.cumsum(size_one + size_two)]).astype(np.int32), low, high, label)
+
+
 def part_of(cuts: Intervals, stations: slice) -> Intervals:
     """Intervals of a run of stations."""
     first = cuts.first[stations.start : stations.stop + 1]

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 import shapely
@@ -12,7 +13,7 @@ from impcheck.artwork.image import Bools, Floats
 from impcheck.artwork.stackup import Stackup
 from impcheck.copper.copper import Copper
 from impcheck.nets.nets import Nets
-from impcheck.path.edges import boxes_of
+from impcheck.path.edges import ROUNDING
 from impcheck.path.frame import Frame
 
 REACH_HEIGHTS = 6.0  # heights beyond the trace's edge out to which copper matters to 0.1 %
@@ -37,6 +38,7 @@ def references(
     middle = windows.origin + windows.heading * (windows.length / 2)[:, None]
     normal = np.stack([-windows.heading[:, 1], windows.heading[:, 0]], axis=1)
     points = np.stack([middle + share * frame.width[:, None] * normal for share in COVER_POINTS], axis=1)
+    boxes = replace(windows, reach=max(COVER_POINTS) * frame.width).boxes(ROUNDING)
     stay_of = stay[frame.leg]
     stays = int(stay.max()) + 1
     weight = np.where(judged, windows.length, 0.0)
@@ -51,12 +53,12 @@ def references(
         if not len(mine):
             continue
         shapely.prepare(layer.shape[mine])
-        flat = points.reshape(-1, 2)
-        at, piece = shapely.STRtree(boxes_of(layer.shape[mine])).query(shapely.points(flat))
-        hit = shapely.intersects_xy(layer.shape[mine[piece]], flat[at, 0], flat[at, 1])
-        full = np.zeros(len(flat), dtype=np.bool_)
-        full[at[hit]] = True
-        covered[index] = np.bincount(stay_of, weight * full.reshape(-1, len(COVER_POINTS)).all(axis=1), stays)
+        near, piece = shapely.STRtree(layer.shape[mine]).query(boxes)
+        full = np.zeros((len(windows), len(COVER_POINTS)), dtype=np.bool_)
+        for index_across in range(len(COVER_POINTS)):
+            x, y = points[near, index_across].T
+            full[near[shapely.intersects_xy(layer.shape[mine[piece]], x, y)], index_across] = True
+        covered[index] = np.bincount(stay_of, weight * full.all(axis=1), stays)
     share = covered / np.maximum(total, 1e-12)
     above, below = np.full(len(own), -1), np.full(len(own), -1)
     for leg, layer in enumerate(own.tolist()):

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from itertools import pairwise
 
 import numpy as np
 import shapely
@@ -108,17 +109,25 @@ def gather(copper: Copper, nets: Nets) -> tuple[Strands, Pads]:
         owner = net_of_label[nets.piece_label[sheet.index]] if len(sheet.shape) else np.empty(0, dtype=np.int64)
         mine = np.flatnonzero(owner >= 0)
         mine = mine[np.argsort(owner[mine], kind="stable")]
-        for pieces in np.split(mine, np.flatnonzero(np.diff(owner[mine])) + 1):
-            if len(pieces):
-                net = int(owner[pieces[0]])
+        flashed = _flashes(sheet, mine)
+        bounds = [0, *(np.flatnonzero(np.diff(owner[mine])) + 1).tolist(), len(mine)]
+        for low, high in pairwise(bounds):
+            if low == high:
+                continue
+            pieces, net = mine[low:high], int(owner[mine[low]])
+            _add_flashes(net, sheet, pieces[flashed[low:high]], pads)
+            if not flashed[low:high].all():
                 reached = (barrel_net == net) & (barrels.first <= sheet.index) & (barrels.last >= sheet.index)
                 holes = (barrels.start[reached] + barrels.end[reached]) / 2
                 parts.append(_on_layer(net, sheet, pieces, pin_points.get((net, sheet.index), []), holes, pads=pads))
-    centres, pad_net = np.array(pads.centre).reshape(-1, 2), np.array(pads.net, dtype=np.int64)
+    pad_net = np.array(pads.net, dtype=np.int64)
+    by_net = np.argsort(pad_net, kind="stable")
+    all_centres, pad_net = np.array(pads.centre).reshape(-1, 2)[by_net], pad_net[by_net]
     for barrel in np.flatnonzero(barrel_net >= 0).tolist():
         middle = (barrels.start[barrel] + barrels.end[barrel]) / 2
         # a drill file of few digits rounds its places: the barrel of a pad stands in its middle
-        away = np.where(pad_net == barrel_net[barrel], np.hypot(*(centres - middle).T), np.inf)
+        centres = all_centres[slice(*np.searchsorted(pad_net, [barrel_net[barrel], barrel_net[barrel] + 1]))]
+        away = np.hypot(*(centres - middle).T)
         place = centres[np.argmin(away)] if len(away) and away.min() <= REGISTRATION else middle
         disc = shapely.LineString([barrels.start[barrel], barrels.end[barrel]]).buffer(barrels.diameter[barrel] / 2)
         if (barrels.start[barrel] == barrels.end[barrel]).all():
@@ -152,27 +161,41 @@ def _pins(nets: Nets) -> list[BoardPin]:
     return found
 
 
+def _flashes(layer: LayerCopper, pieces: NDArray[np.int64]) -> Bools:
+    """(pieces,) True for flashes and for strokes of no length, which are flashes too."""
+    drawn = layer.object[pieces] >= 0
+    item = np.maximum(layer.object[pieces], 0)
+    if not len(layer.image.kind):
+        return drawn
+    dot = (layer.image.kind[item] == Kind.DRAW) & (np.hypot(*(layer.image.end[item] - layer.image.start[item]).T) <= 1e-9)
+    result: Bools = drawn & ((layer.image.kind[item] == Kind.FLASH) | dot)
+    return result
+
+
+def _add_flashes(net: int, layer: LayerCopper, pieces: NDArray[np.int64], pads: Pads) -> None:
+    """Adds the flashes `pieces` to `pads`, each at its place, or inside what clear copper left of it."""
+    centres = layer.image.start[layer.object[pieces]]
+    for piece, drawn_at in zip(pieces.tolist(), centres.tolist(), strict=True):
+        shape = layer.shape[piece]
+        hollow = not layer.whole[piece] and not shapely.intersects_xy(shape, *drawn_at)
+        place = shape.representative_point().coords[0] if hollow else drawn_at
+        pads.add(net, layer.index, shape, (place[0], place[1]))
+
+
 def _on_layer(
     net: int, layer: LayerCopper, pieces: NDArray[np.int64], pins: list[tuple[float, float]], holes: Floats, *, pads: Pads
 ) -> Strands:
-    """Strands of one net on one layer; its pads are added to `pads`."""
+    """Strands of one net on one layer; its pads beside the flashes are added to `pads`."""
     image, objects = layer.image, layer.object[pieces]
     kind = np.where(objects >= 0, image.kind[np.maximum(objects, 0)], int(Kind.REGION)).astype(np.int64)
-    length = np.where(objects >= 0, np.hypot(*(image.end[np.maximum(objects, 0)] - image.start[np.maximum(objects, 0)]).T), 0.0)
-    draws = (kind == Kind.DRAW) & (length > 1e-9)
-    arcs = kind == Kind.ARC
-    flashes = (kind == Kind.FLASH) | ((kind == Kind.DRAW) & ~draws)
+    flashes = _flashes(layer, pieces)
+    draws, arcs = (kind == Kind.DRAW) & ~flashes, kind == Kind.ARC
     shapes = layer.shape[pieces]
     strokes, piece_of = _stroke_lines(net, layer, pieces, draws, arcs)
     painted = np.zeros(len(pieces), dtype=np.bool_)
     if np.count_nonzero(~flashes) > 1 and len(strokes):
         painted = _painted(strokes, piece_of, shapes, flashes)
         strokes = strokes.take(~painted[piece_of])
-    for position in np.flatnonzero(flashes).tolist():
-        centre = image.start[objects[position]]
-        if not layer.whole[pieces[position]] and not shapely.intersects_xy(shapes[position], *centre):
-            centre = np.array(shapes[position].representative_point().coords[0])
-        pads.add(net, layer.index, shapes[position], tuple(centre))
     others = np.flatnonzero(((kind == Kind.REGION) & ~arcs) | painted)
     if not len(others):
         return strokes
@@ -185,8 +208,8 @@ def _on_layer(
     solid = [*shapes[(draws | arcs) & ~painted], *shapes[flashes]]
     lines, pours = centrelines(shapes[kept], solid, len(strokes) > 0)
     for shape in pours:
-        centre = shape.centroid if shape.intersects(shape.centroid) else shape.representative_point()
-        pads.add(net, layer.index, shape, (centre.x, centre.y), blob=True)
+        middle = shape.centroid if shape.intersects(shape.centroid) else shape.representative_point()
+        pads.add(net, layer.index, shape, (middle.x, middle.y), blob=True)
     return Strands.join([strokes, *(strands_of(net, layer.index, *line) for line in lines)])
 
 

@@ -48,8 +48,8 @@ class Stations:
     zone: NDArray[np.uint8]  # (n,) Zone
     reach: float  # half-width of the cuts, mm
     cuts: Mapping[int, Intervals]  # copper layer index -> what the cuts meet there; own layer (own net included), and outwards above and
-    # below to the layer where return copper closes the reach at every station (or the last layer). Up to the reference every station is
-    # cut; beyond it those are left without entries whose reach is closed already
+    # below. Up to the reference every station is cut; beyond it those without entries have return copper all along the trace's width (and
+    # a quarter of the height beyond) on a nearer layer, so that what lies behind does not matter, or lie in the antipad of an own via
     above: Ints  # (n,) copper layer of the reference above, -1 none
     below: Ints  # (n,) copper layer of the reference below, -1 none
     coverage_above: Floats  # (n,) share of the trace's width that return copper on `above` covers

@@ -10,6 +10,7 @@ import shapely
 from numpy.typing import NDArray
 
 from impcheck.artwork.image import Bools, Floats
+from impcheck.path.edges import Windows
 from impcheck.path.frame import Frame, corners, weighted_median
 from impcheck.path.walk import Zone
 
@@ -80,20 +81,29 @@ def within(leg: NDArray[np.int64], middle: Floats, spans: tuple[NDArray[np.int64
     return inside
 
 
-def pad_zones(points: Floats, net: NDArray[np.int64], pads: PadShapes) -> tuple[NDArray[np.uint8], Floats]:
+def pad_zones(
+    points: Floats, window: NDArray[np.int64], net: NDArray[np.int64], windows: Windows, pads: PadShapes
+) -> tuple[NDArray[np.uint8], Floats]:
     """(stations,) Zone.PAD or Zone.VIA where the point (n, 2) lies in a pad of its own net, else Zone.TRACE; and the size of the largest
-    pad there (infinite where there is none)."""
+    pad there (infinite where there is none). `window` (stations,), rising, is the window each point lies in, `net` (windows,) its group."""
     zone = np.full(len(points), int(Zone.TRACE), dtype=np.uint8)
     if not len(pads.shape) or not len(points):
         return zone, np.full(len(points), np.inf)
-    station, pad = shapely.STRtree(pads.shape).query(shapely.points(points), predicate="intersects")
-    mine = pads.net[pad] == net[station]
-    station, pad = station[mine], pad[mine]
+    near, pad = shapely.STRtree(pads.shape).query(windows.boxes())
+    mine = pads.net[pad] == net[near]
+    near, pad = near[mine], pad[mine]
+    first = np.searchsorted(window, near, side="left")
+    size = np.searchsorted(window, near, side="right") - first
+    pad = np.repeat(pad, size)
+    station = np.arange(len(pad)) + np.repeat(first - (np.cumsum(size) - size), size)
+    shapely.prepare(pads.shape)
+    inside = shapely.intersects_xy(pads.shape[pad], points[station, 0], points[station, 1])
+    station, pad = station[inside], pad[inside]
     zone[station] = int(Zone.PAD)
     zone[station[pads.via[pad]]] = int(Zone.VIA)
-    size = np.full(len(points), -np.inf)
-    np.maximum.at(size, station, pads.size[pad])
-    return zone, np.where(size > 0, size, np.inf)
+    largest = np.full(len(points), -np.inf)
+    np.maximum.at(largest, station, pads.size[pad])
+    return zone, np.where(largest > 0, largest, np.inf)
 
 
 def spread_teardrops(
@@ -104,17 +114,19 @@ def spread_teardrops(
     if not usual > 0:
         return
     count = len(zone)
+    trace, bend, junction, pad = int(Zone.TRACE), int(Zone.BEND), int(Zone.JUNCTION), int(Zone.PAD)
     for side in (0, 1):
-        order = list(range(count)) if side == 0 else list(range(count - 1, -1, -1))
-        start = next((k for k, index in enumerate(order) if zone[index] not in (Zone.PAD, Zone.VIA, Zone.JUNCTION)), count)
+        order = range(count) if side == 0 else range(count - 1, -1, -1)
+        free = np.flatnonzero(np.isin(zone[:: 1 - 2 * side], (trace, bend)))
+        start = int(free[0]) if len(free) else count
         if start == 0 and not open_ends[side]:
             continue
-        kind = int(zone[order[start - 1]]) if start else int(Zone.PAD)
-        bulging = open_ends[side] and kind == Zone.PAD
+        kind = int(zone[order[start - 1]]) if start else pad
+        bulging = open_ends[side] and kind == pad
         previous, flat, spread = np.inf, 0.0, 0.0
         for k in range(start, count):
             index, size = order[k], end[order[k]] - begin[order[k]]
-            if zone[index] not in (Zone.TRACE, Zone.BEND) or width[index] <= WIDER * usual or spread > TEARDROP:
+            if zone[index] not in (trace, bend) or width[index] <= WIDER * usual or spread > TEARDROP:
                 break
             ahead = width[order[k + 1]] if k + 1 < count else width[index]
             flat = flat + size if width[index] > 0.99 * previous or ahead > 0.99 * width[index] else 0.0
@@ -122,7 +134,7 @@ def spread_teardrops(
             if (width[index] > 1.001 * previous or flat > PLATEAU) and not bulge:
                 break
             spread += size
-            if zone[index] == Zone.TRACE or kind != Zone.JUNCTION:
+            if zone[index] == trace or kind != junction:
                 zone[index] = kind
             previous = width[index]
 
@@ -153,12 +165,12 @@ def carried_width(zone: NDArray[np.uint8], width: Floats, fallback: float) -> Fl
     if not poor.any():
         return width
     result = width.copy()
-    usable = np.flatnonzero(good)
-    for index in np.flatnonzero(poor).tolist():
-        at = int(np.searchsorted(usable, index))
-        beside = [width[usable[k]] for k in (at - 1, at) if 0 <= k < len(usable)]
-        limit = max(beside) if beside else fallback
-        result[index] = min(width[index], limit) if width[index] > 0 else limit
+    usable, index = np.flatnonzero(good), np.flatnonzero(poor)
+    limit = np.full(len(index), fallback)
+    if len(usable):
+        after = np.searchsorted(usable, index)
+        limit = np.maximum(width[usable[np.maximum(after - 1, 0)]], width[usable[np.minimum(after, len(usable) - 1)]])
+    result[index] = np.where(width[index] > 0, np.minimum(width[index], limit), limit)
     return result
 
 

@@ -12,6 +12,7 @@ from hypothesis import strategies as st
 from impcheck.artwork.stackup import CopperItem, Dielectric, Mask, Stackup
 from impcheck.fields.cross_section import Shape, place_of, section_of, snapped
 from impcheck.fields.profiles import solve_places
+from impcheck.fields.section import Conductor, Section, Slab
 from impcheck.fields.solver import solve
 
 MASK = Mask(0.02, 3.6)
@@ -97,8 +98,8 @@ def random_cut(seed):
             away = height(stackup, layer, layers[0])
             openings = []
             for _ in range(rng.choice([1, 1, 2])):
-                size = away * math.exp(rng.uniform(math.log(0.3), math.log(6.0)))
-                middle = rng.uniform(-1, 1) * (width / 2 + 4 * away + size / 2)
+                size = away * math.exp(rng.uniform(math.log(0.3), math.log(12.0)))
+                middle = rng.uniform(-1, 1) * (width / 2 + 3 * away + size / 2)
                 openings.append((middle - size / 2, middle + size / 2))
             side[0] = holed(stackup, layer, layers[0], width, *openings)
         sides.append(side)
@@ -132,9 +133,9 @@ def test_what_snapping_costs():
         cut = random_cut(seed)
         (z0, _, _), *_ = solve_places([place(cut)], cut[0])
         errors.append(abs(z0 / solve(as_it_is(cut), 2e-3).z0 - 1))
-    assert np.median(errors) < 2.5e-3
-    assert np.quantile(errors, 0.9) < 7e-3
-    assert max(errors) < 2.5e-2
+    assert np.median(errors) < 2e-3
+    assert np.quantile(errors, 0.9) < 6e-3
+    assert max(errors) < 2e-2
 
 
 @settings(max_examples=150, deadline=None)
@@ -251,3 +252,81 @@ def test_mask_lowers_the_impedance_of_a_microstrip():
     # common practice: mask lowers a surface microstrip by one to a few ohm
     z = [solve(section_of(Shape(0, 0.2, (), (), -1, 1, coated), FOUR)).z0 for coated in (False, True)]
     assert 0.5 < z[0] - z[1] < 5.0
+
+
+def test_what_lies_deep_behind_a_narrow_opening_is_taken_for_whole():
+    # L3 lies 0.52 mm behind L2. Behind an opening 0.3 mm wide nothing is seen there, behind one 1 mm wide it is
+    for wide, planes in ((0.3, 1), (1.0, 2)):
+        cut = [holed(FOUR, 0, layer, 0.19, (-wide / 2, wide / 2)) for layer in (1, 2)]
+        assert len(place((FOUR, 0, 0.19, (), [], [*cut, whole(FOUR, 0, 3, 0.19)])).main.planes) == planes
+
+
+def test_taking_it_for_whole_costs_little():
+    # the module's claim: 0.8 % one width behind, less beyond
+    edges = ((-30.0, -0.15), (0.15, 30.0))
+    short, full = Shape(0, 0.19, (), ((1, edges),), -1, 2, True), Shape(0, 0.19, (), ((1, edges), (2, edges)), -1, 3, True)
+    assert solve(section_of(short, FOUR), 2e-3).z0 == pytest.approx(solve(section_of(full, FOUR), 2e-3).z0, rel=5e-3)
+
+
+def between(*traces, layer=3):
+    """A stripline on L3 of six with foreign traces on a layer between it and the planes L2 and L5."""
+    planes = ([whole(SIX, 2, 1, 0.17)], [whole(SIX, 2, 4, 0.17)])
+    return place_of(2, 0.17, (), *planes, SIX, True, 1.0, ((layer, traces),))
+
+
+def test_a_foreign_trace_between_the_planes_stands_in_the_section():
+    found = between((0.0, 0.15)).main
+    ((layer, edges),) = found.planes
+    assert layer == 3
+    assert (edges if edges[0][1] > 0.1 else ((-edges[0][1], -edges[0][0]),)) == (pytest.approx((0.0, 0.15), abs=0.02),)
+    z = [solve_places([p], SIX)[0][0] for p in (between(), between((-0.075, 0.075)), between((-0.3, 0.3)))]
+    assert z[0] > z[1] > z[2]
+    # the section drawn as it is, nothing snapped
+    truth = Shape(2, 0.17, (), ((3, ((-0.075, 0.075),)),), 1, 4, False)
+    assert z[1] == pytest.approx(solve(section_of(truth, SIX), 2e-3).z0, rel=5e-3)
+
+
+def test_its_mirror_image_is_the_same():
+    assert between((0.05, 0.2)) == between((-0.2, -0.05))
+
+
+def test_beyond_a_plane_it_is_not_seen():
+    assert between((0.0, 0.15), layer=5) == between()
+    assert between((0.0, 0.15), layer=0) == between()
+
+
+@pytest.mark.parametrize("wide", [0.4, 0.6, 0.8, 0.9, 1.0, 1.5, 2.0, 3.0])
+def test_an_opening_of_any_width_under_the_trace(wide):
+    # wide against the 0.11 mm to its own plane its edges still matter, for the plane seen through it is 0.64 mm away
+    for stackup, layer, width, upper, lower in ((FOUR, 0, 0.19, (), (1, 2)), (SIX, 2, 0.17, (1,), (3, 4))):
+        above = [whole(stackup, layer, other, width) for other in upper]
+        below = [(lower[0], ((-8.0, -wide / 2), (wide / 2, 8.0))), whole(stackup, layer, lower[1], width)]
+        z = solve_places([place((stackup, layer, width, (), above, below))], stackup)[0][0]
+        edges = ((-30.0, -wide / 2), (wide / 2, 30.0))
+        truth = Shape(layer, width, (), ((lower[0], edges),), 1 if upper else -1, lower[1], True)
+        assert z == pytest.approx(solve(section_of(truth, stackup), 2e-3).z0, rel=1e-2)
+
+
+@pytest.mark.parametrize("opening", [0.6, 0.9, 1.2, 1.6, 2.0])
+def test_a_wide_opening_keeps_its_edges(opening):
+    """A plane whose opening is wide against the trace's height over it still matters where the next plane is far: the section as profiled
+    against the same section given to the solver whole (exact copper, no snapping)."""
+    stack = Stackup(
+        (
+            CopperItem("L1", 0.042),
+            Dielectric(0.11, 4.0),
+            CopperItem("L2", 0.017),
+            Dielectric(1.2, 4.4),
+            CopperItem("L3", 0.017),
+            Dielectric(0.11, 4.0),
+            CopperItem("L4", 0.042),
+        )
+    )
+    (low1, high1), (low2, high2), (_, floor), _ = stack.heights
+    halves = ((-5.0, -opening / 2), (opening / 2, 5.0))
+    place = place_of(0, 0.18, (), [], [(1, halves), (2, ((-5.0, 5.0),))], stack, False, 1.0)
+    copper = [Conductor("s", "signal", ((-0.09, low1), (0.09, low1), (0.09, high1), (-0.09, high1)))]
+    copper += [Conductor("g", "return", ((a, low2), (b, low2), (b, high2), (a, high2))) for a, b in halves]
+    slabs = tuple(Slab(max(s.bottom, floor), s.top, s.er) for s in stack.slabs if s.top > floor)
+    whole = solve(Section(slabs, tuple(copper), (floor,))).z0
+    assert solve_places([place], stack)[0][0] == pytest.approx(whole, rel=0.01)
