@@ -23,6 +23,7 @@ from impcheck.nets.nets import Nets
 from impcheck.path.walk import Intervals, Run, Walk, Zone
 
 GRAIN = 0.002  # mm: stations whose cuts agree to this are one before anything is computed
+ENDLESS = 1000.0  # mm, where copper that goes on beyond a cut is taken to end
 MOST = 800  # sections solved for one board
 COARSEST = 32.0
 FEWEST = 12  # sections a process, for which starting one does not pay
@@ -93,11 +94,11 @@ def _places_of_run(
     fine = np.isin(stations.zone, (Zone.TRACE, Zone.BEND))
     coated = _coated(run, stackup, copper)
     cuts = {
-        layer: _prepared(cut, stations.centre, ~own[cut.label] if layer == run.layer else returns[cut.label])
+        layer: _prepared(cut, stations.centre, stations.reach, ~own[cut.label] if layer == run.layer else returns[cut.label])
         for layer, cut in stations.cuts.items()
     }
     foreign = {
-        layer: _prepared(stations.cuts[layer], stations.centre, use)
+        layer: _prepared(stations.cuts[layer], stations.centre, stations.reach, use)
         for layer, use in alongside(run, stackup, returns, own).items()
         if use.any()
     }
@@ -150,13 +151,15 @@ class _Cut:
         return tuple(found)
 
 
-def _prepared(cut: Intervals, centre: Floats, use: Bools) -> _Cut:
+def _prepared(cut: Intervals, centre: Floats, reach: float, use: Bools) -> _Cut:
     """The entries of a cut to be used, relative to the middle of the trace."""
     count = np.diff(cut.first)
     station = np.repeat(np.arange(len(count)), count)
     first = np.concatenate([[0], np.cumsum(np.bincount(station[use], minlength=len(count)))])
     shift = centre[station[use]]
-    return _Cut(first, cut.low[use] - shift, cut.high[use] - shift)
+    low, high = cut.low[use], cut.high[use]
+    # what is cut off at the reach goes on: read as an edge there it would make a strip of a plane
+    return _Cut(first, np.where(low <= -reach + 1e-6, -ENDLESS, low - shift), np.where(high >= reach - 1e-6, ENDLESS, high - shift))
 
 
 def _coated(run: Run, stackup: Stackup, copper: Copper) -> Bools:
